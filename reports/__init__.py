@@ -1,0 +1,1 @@
+"""Views of evidence; they read it and run nothing."""

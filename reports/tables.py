@@ -1,0 +1,91 @@
+"""The tables of a piece of evidence as headings and rows of text, for every view to show."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from sdebench.reports import numbers
+
+from sdebench.evidence import Evidence, Result, Term
+from sdebench.verdict import Verdict
+
+
+@dataclass(frozen=True)
+class Table:
+    """A title, headings, rows of text, and which columns hold numbers."""
+
+    title: str
+    headings: tuple[str, ...]
+    rows: Sequence[tuple[str, ...]]
+    numeric: frozenset[int]
+
+
+def claims_table(evidence: Evidence) -> Table:
+    """Return one row a claim: what was claimed, measured, and the verdict."""
+    rows = [
+        (
+            claim.scheme,
+            claim.problem,
+            claim.kind,
+            numbers.claimed(claim.claimed),
+            numbers.interval(claim.order, claim.low, claim.high, claim.exact),
+            claim.verdict.value,
+        )
+        for claim in evidence.claims
+    ]
+    headings = ("scheme", "problem", "kind", "claimed", "local order, finest pair", "verdict")
+    return Table("", headings, rows, frozenset({3}))
+
+
+def rungs_table(result: Result) -> Table:
+    """Return one row a rung: steps, error, local order, and whether it counts."""
+    rows = [
+        (
+            str(rung.steps),
+            f"{rung.h:.6g}",
+            "NaN or infinity"
+            if rung.error is None
+            else numbers.with_uncertainty(rung.error, rung.uncertainty),
+            "" if rung.local_order is None else numbers.order(rung.local_order),
+            "yes" if rung.counts else "no",
+        )
+        for rung in result.rungs
+    ]
+    what = result.functional or ("largest on the grid" if result.at == "grid" else "")
+    title = ", ".join(
+        part for part in (f"{result.scheme} on {result.problem}", result.kind, what) if part
+    )
+    headings = ("steps", "h", "error", "local order", "counts")
+    return Table(title, headings, rows, frozenset({0, 1, 2, 3}))
+
+
+def terms_table(result: Result) -> Table:
+    """Return the one-step terms: the scheme's beside the SDE's."""
+    rows = [
+        (
+            term.term,
+            _coefficient(term.yours, term),
+            _coefficient(term.needed, term),
+            _judgement(term),
+            term.at,
+        )
+        for term in result.terms
+    ]
+    title = f"{result.scheme} on {result.problem}, one step: leading terms as h → 0"
+    headings = ("term", "yours", "the SDE", "", "where")
+    return Table(title, headings, rows, frozenset({1, 2}))
+
+
+def refuted_by_terms(result: Result) -> bool:
+    """Return whether a one-step row is refuted by a term that its claim needs."""
+    wrong = any(term.differs and term.required for term in result.terms)
+    return result.kind == "one-step" and result.verdict is Verdict.REFUTED and wrong
+
+
+def _coefficient(value: float, term: Term) -> str:
+    return "0" if abs(value) <= term.uncertainty else f"{value:.6g}"
+
+
+def _judgement(term: Term) -> str:
+    if not term.differs:
+        return "agrees"
+    return "differs" if term.required else "differs, not needed"

@@ -1,0 +1,133 @@
+"""Evidence on a terminal: a table of claims, then what the reader must know about each.
+
+Plain text where the output is no terminal; colours are left out where NO_COLOR is set.
+"""
+
+import sys
+from collections.abc import Callable, Iterable, Iterator
+from contextlib import contextmanager
+from time import monotonic
+from typing import TextIO
+
+from rich.console import Console
+from rich.progress import BarColumn, Progress, TaskProgressColumn, TextColumn
+from rich.table import Table as Grid
+from rich.text import Text
+from sdebench.reports.tables import (
+    Table,
+    claims_table,
+    refuted_by_terms,
+    rungs_table,
+    terms_table,
+)
+
+from sdebench.evidence import ClaimResult, Evidence, Result
+from sdebench.verdict import Verdict
+
+Report = Callable[[str, int, int], None]
+STYLES = {"supported": "green", "refuted": "bold red", "undecided": "yellow"}
+PLAIN_WIDTH = 200  # columns where the output is no terminal: rows are not folded
+
+
+def console(stream: TextIO | None = None) -> Console:
+    """Return a console on `stream` (standard output by default)."""
+    found = Console(file=stream or sys.stdout, highlight=False, emoji=False, markup=False)
+    if not found.is_terminal:
+        found.width = PLAIN_WIDTH
+    return found
+
+
+def show_evidence(evidence: Evidence, on: Console) -> None:
+    """Print the claims, a sentence on each that is not supported, and the tables behind it."""
+    show_table(claims_table(evidence), on)
+    single = len({(claim.scheme, claim.problem) for claim in evidence.claims}) == 1
+    for claim in evidence.claims:
+        if claim.verdict is not Verdict.SUPPORTED:
+            on.print()
+            _show_sentence(claim, on)
+    shown = [row for row in evidence.results if single or _explains(row, evidence)]
+    for row in shown:
+        if row.terms and (single or refuted_by_terms(row)):
+            on.print()
+            show_table(terms_table(row), on)
+        if row.rungs and row.kind != "one-step":
+            on.print()
+            show_table(rungs_table(row), on)
+            if row.verdict is Verdict.SUPPORTED:
+                on.print(Text(row.sentence), soft_wrap=True)
+    on.print()
+    on.print(_summary(evidence), soft_wrap=True)
+
+
+def show_table(table: Table, on: Console) -> None:
+    """Print a table without rules: headings, then aligned rows."""
+    if table.title:
+        on.print(Text(table.title, style="bold"), soft_wrap=True)
+    grid = Grid(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="dim")
+    for i, heading in enumerate(table.headings):
+        grid.add_column(Text(heading), justify="right" if i in table.numeric else "left")
+    for row in table.rows:
+        grid.add_row(*(Text(cell, style=STYLES.get(cell, "")) for cell in row))
+    on.print(grid)
+
+
+@contextmanager
+def progress_bar(on: Console, quiet: bool) -> Iterator[Report | None]:
+    """Yield a progress report that draws a bar once the work has taken over a second."""
+    if quiet or not on.is_terminal:
+        yield None
+        return
+    begin = monotonic()
+    columns = (TextColumn("{task.description}"), BarColumn(), TaskProgressColumn())
+    bar = Progress(*columns, console=on, transient=True)
+    task = bar.add_task("", total=None)
+
+    def report(what: str, done: int, total: int) -> None:
+        if not bar.live.is_started and monotonic() - begin > 1.0:
+            bar.start()
+        bar.update(task, description=Text(what).plain, completed=done, total=total)
+
+    try:
+        yield report
+    finally:
+        if bar.live.is_started:
+            bar.stop()
+
+
+def _explains(row: Result, evidence: Evidence) -> bool:
+    """Whether a row's table says why a claim is not supported."""
+    if refuted_by_terms(row):
+        return True
+    if row.kind not in ("strong", "weak") or not row.counts:
+        return False
+    return row.verdict in (Verdict.REFUTED, Verdict.UNDECIDED) and not any(
+        other.scheme == row.scheme
+        and other.problem == row.problem
+        and other.bears_on == row.kind
+        and refuted_by_terms(other)
+        for other in evidence.results
+    )
+
+
+def _show_sentence(claim: ClaimResult, on: Console) -> None:
+    head = f"{claim.scheme} on {claim.problem}, {claim.kind}: "
+    verdict = Text(claim.verdict.value, style=STYLES.get(claim.verdict.value, ""))
+    on.print(Text(head) + verdict + Text(f". {claim.sentence}"), soft_wrap=True)
+
+
+def _summary(evidence: Evidence) -> Text:
+    counts = _counted(claim.verdict.value for claim in evidence.claims)
+    p = evidence.provenance
+    verdict = Text(evidence.verdict.value, style=STYLES.get(evidence.verdict.value, ""))
+    tail = (
+        f" ({counts}). {p.confidence:.0%} confidence over the whole run, tolerance "
+        f"{p.tolerance:g}, seed {p.seed}, {p.seconds:.1f} s."
+    )
+    return Text("Verdict: ") + verdict + Text(tail)
+
+
+def _counted(words: Iterable[str]) -> str:
+    found: dict[str, int] = {}
+    for word in words:
+        found[word] = found.get(word, 0) + 1
+    return ", ".join(f"{n} {word}" for word, n in found.items()) or "no claims"

@@ -1,0 +1,1 @@
+"""The schemes that the bench measures, one file each."""

@@ -1,0 +1,41 @@
+"""Measure whether an integrator for stochastic differential equations converges as it claims.
+
+The public door: everything a scheme, a problem or a study needs is imported from here.
+"""
+
+from sdebench.discovery import find_problem as problem
+from sdebench.errors import BenchFault, SdebenchError
+from sdebench.evidence import Evidence, load, schema
+from sdebench.functional import Functional
+from sdebench.integrator import Claim, Scheme, scheme
+from sdebench.ladder import Ladder
+from sdebench.problem import NormalLaw, Parameter, Params, Problem
+from sdebench.sde import SDE, Array
+from sdebench.study import measure
+from sdebench.verdict import Verdict
+from sdebench.wiener import Noise, StepLaw, concatenate
+
+__all__ = [
+    "SDE",
+    "Array",
+    "BenchFault",
+    "Claim",
+    "Evidence",
+    "Functional",
+    "Ladder",
+    "Noise",
+    "NormalLaw",
+    "Parameter",
+    "Params",
+    "Problem",
+    "Scheme",
+    "SdebenchError",
+    "StepLaw",
+    "Verdict",
+    "concatenate",
+    "load",
+    "measure",
+    "problem",
+    "schema",
+    "scheme",
+]

@@ -1,0 +1,5 @@
+"""`python -m sdebench`."""
+
+from sdebench.cli import main
+
+main()

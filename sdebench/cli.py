@@ -1,0 +1,154 @@
+"""The command line: a client of the public interface.
+
+Exit codes: 0 every claim supported; 1 a claim refuted; 2 wrong use or bad input; 3 undecided;
+4 the bench contradicts itself.
+"""
+
+import json
+import os
+import sys
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Any
+
+import click
+
+from sdebench.errors import SdebenchError
+
+
+class Steps(click.ParamType[tuple[int, ...]]):
+    """A ladder as comma-separated numbers of steps."""
+
+    name = "N,N,..."
+
+    def convert(
+        self, value: Any, param: click.Parameter | None, ctx: click.Context | None
+    ) -> tuple[int, ...]:
+        """Return the numbers; the ladder itself is checked by the study."""
+        try:
+            return tuple(int(part) for part in str(value).split(","))
+        except ValueError:
+            self.fail(f"'{value}' is no list of whole numbers such as 8,16,32,64.", param, ctx)
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(package_name="sdebench")
+def cli() -> None:
+    """Measure whether SDE integrators converge, strongly and weakly, at the orders they claim."""
+
+
+@cli.command()
+@click.argument("schemes", metavar="[SCHEME]...", nargs=-1)
+@click.option(
+    "--on",
+    "problems",
+    metavar="PROBLEM",
+    multiple=True,
+    help="A problem, with parameters if wanted: gbm:mu=1.5,sigma=0.5. May be repeated. "
+    "Default: every problem the scheme applies to.",
+)
+@click.option("--steps", type=Steps(), help="The rungs of the ladder.  [default: 4,8,16,32,64]")
+@click.option(
+    "--functional",
+    "functionals",
+    metavar="NAME",
+    multiple=True,
+    help="A further weak functional, file.py:function. May be repeated.",
+)
+@click.option(
+    "--grid-maximum", is_flag=True, help="Also the largest strong error over each rung's grid."
+)
+@click.option(
+    "--route",
+    type=click.Choice(["sampled"]),
+    default="sampled",
+    help="How global errors are obtained.",
+)
+@click.option("--seed", type=int, default=1, show_default=True, help="Same seed, same bits.")
+@click.option("--confidence", type=float, default=0.95, show_default=True, help="Of intervals.")
+@click.option("--tolerance", type=float, default=0.1, show_default=True, help="In orders.")
+@click.option("--budget", type=float, metavar="SECONDS", help="Stop looking after this time.")
+@click.option("--looks", type=int, metavar="K", help="Look exactly K times.")
+@click.option("--threads", type=int, help="Threads; no result depends on it.")
+@click.option("--save", type=click.Path(path_type=Path), metavar="EVIDENCE.json")
+@click.option("--quiet", is_flag=True, help="Print nothing but what is not supported.")
+def measure(
+    schemes: tuple[str, ...],
+    problems: tuple[str, ...],
+    functionals: tuple[str, ...],
+    save: Path | None,
+    quiet: bool,
+    route: str,
+    **options: Any,
+) -> None:
+    """Measure schemes and judge their claims.
+
+    SCHEME is a registered name or file.py:function; none means every registered one.
+    """
+    from sdebench.evidence import check_writable
+    from sdebench.reports import terminal
+    from sdebench.study import measure as run
+
+    if save is not None:
+        check_writable(save)
+    with terminal.progress_bar(terminal.console(sys.stderr), quiet) as progress:
+        evidence = run(
+            schemes or None, problems or None, functionals=functionals, progress=progress, **options
+        )
+    if save is not None:
+        evidence.save(save)
+    if not quiet or evidence.exit_code:
+        terminal.show_evidence(evidence, terminal.console())
+    sys.exit(evidence.exit_code)
+
+
+@cli.command()
+def catalogue() -> None:
+    """List the schemes, the problems and the functionals that there are."""
+    from sdebench import discovery
+    from sdebench.functional import STANDARD
+    from sdebench.reports import catalogue as tables
+    from sdebench.reports import terminal
+
+    out = terminal.console()
+    found = discovery.schemes().values(), discovery.problems().values()
+    for table in tables.catalogue(*found, STANDARD):
+        terminal.show_table(table, out)
+        out.print()
+
+
+@cli.command()
+def schema() -> None:
+    """Print the JSON Schema of the evidence file."""
+    from sdebench.evidence import schema as evidence_schema
+
+    click.echo(json.dumps(evidence_schema(), indent=2))
+
+
+@contextmanager
+def told() -> Iterator[None]:
+    """Turn the exceptions of the bench into one sentence on standard error and an exit code."""
+    try:
+        yield
+    except SdebenchError as error:
+        click.echo(f"sdebench: {error}", err=True)
+        sys.exit(error.exit_code)
+    except KeyboardInterrupt:
+        click.echo("sdebench: interrupted; nothing was written.", err=True)
+        sys.exit(130)
+    except BrokenPipeError:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        sys.exit(141)
+
+
+def main() -> None:
+    """Run the command line."""
+    with told():
+        try:
+            cli.main(standalone_mode=False)
+        except click.exceptions.Abort:
+            raise KeyboardInterrupt from None
+        except click.ClickException as error:
+            error.show()
+            sys.exit(error.exit_code)

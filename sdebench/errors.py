@@ -1,0 +1,101 @@
+"""What can go wrong in using the bench: each class takes the facts and writes the sentence.
+
+A scientific outcome is never an exception. Everything here but `BenchFault` is a wrong use or
+a bad input and ends a command with exit code 2; `BenchFault` says that the bench contradicts
+itself and ends it with 4.
+"""
+
+from collections.abc import Iterable, Sequence
+from difflib import get_close_matches
+
+
+class SdebenchError(Exception):
+    """A mistake in what the bench was given; its text is the whole message for the user."""
+
+    exit_code = 2
+
+
+class BenchFault(SdebenchError):
+    """Two sources inside the bench disagree beyond chance; never blamed on the user."""
+
+    exit_code = 4
+
+
+class UnknownName(SdebenchError):
+    """A scheme, problem, parameter or functional that does not exist."""
+
+    def __init__(self, kind: str, name: str, known: Iterable[str], hint: str = "") -> None:
+        names = sorted(known)
+        near = get_close_matches(name, names, n=1, cutoff=0.5)
+        guess = f" Did you mean '{near[0]}'?" if near else ""
+        listing = hint or (f" Known: {', '.join(names)}." if names else "")
+        super().__init__(f"No {kind} named '{name}'.{guess}{listing}")
+
+
+class DuplicateName(SdebenchError):
+    """Two things of one kind claim the same name."""
+
+    def __init__(self, kind: str, name: str, places: Sequence[str]) -> None:
+        super().__init__(
+            f"Two {kind}s are named '{name}' ({' and '.join(places)}): "
+            "names are unique; rename one, for instance with name='...'."
+        )
+
+
+class BadParameter(SdebenchError):
+    """A parameter of a problem that is missing, not a number, or outside its domain."""
+
+    def __init__(self, problem: str, name: str, value: object, rule: str) -> None:
+        super().__init__(f"{problem}: {name} = {value!s} cannot be used: {rule}.")
+
+
+class BadClaim(SdebenchError):
+    """A claim that is not a usable order."""
+
+    def __init__(self, scheme: str, claim: str, value: object, rule: str) -> None:
+        super().__init__(f"Scheme '{scheme}' claims {claim}={value!r}: {rule}.")
+
+
+class BadOption(SdebenchError):
+    """An option of a study whose value cannot be used."""
+
+    def __init__(self, option: str, value: object, rule: str) -> None:
+        super().__init__(f"{option} = {value!s} cannot be used: {rule}.")
+
+
+class UndeclaredFunctional(SdebenchError, AttributeError):
+    """A step reads a Wiener functional that its scheme did not ask for."""
+
+    def __init__(self, name: str, given: Sequence[str]) -> None:
+        wanted = ", ".join(f'"{n}"' for n in (*given, name))
+        super().__init__(
+            f"The step reads noise.{name}, but its scheme declares only {', '.join(given)}: "
+            f"write @scheme(..., noise=({wanted}))."
+        )
+
+
+class UserFileError(SdebenchError):
+    """A user's file that is missing, does not parse, fails to load, or lacks what was named."""
+
+
+class SchemeRaised(SdebenchError):
+    """A step that raised; carries the user's own frames only."""
+
+    def __init__(self, scheme: str, where: str, cause: BaseException, frames: str) -> None:
+        super().__init__(
+            f"Scheme '{scheme}' raised {type(cause).__name__} {where}: {cause}\n{frames}".rstrip()
+        )
+
+
+class BadEvidenceFile(SdebenchError):
+    """An evidence file that cannot be read back."""
+
+    def __init__(self, path: str, why: str) -> None:
+        super().__init__(f"'{path}' is not a readable evidence file: {why}.")
+
+
+class CannotWrite(SdebenchError):
+    """A file that cannot be written; for evidence, found out before anything is measured."""
+
+    def __init__(self, path: str, why: str) -> None:
+        super().__init__(f"Cannot write '{path}': {why}. Name a file in a folder you may write to.")

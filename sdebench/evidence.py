@@ -1,0 +1,225 @@
+"""The evidence file: its types, and how it is read and written.
+
+The types are the schema: what they cannot hold is not written and not read. Files are JSON,
+written whole or not at all.
+"""
+
+import os
+import tempfile
+from pathlib import Path
+from typing import Annotated, Any, Literal
+
+import msgspec
+
+from sdebench.errors import BadEvidenceFile, CannotWrite
+from sdebench.verdict import Verdict
+
+FORMAT: Literal["sdebench-evidence/1"] = "sdebench-evidence/1"
+Kind = Literal["contract", "one-step", "strong", "weak"]
+Route = Literal["quadrature", "propagated", "sampled"]
+Count = Annotated[int, msgspec.Meta(ge=0)]
+
+
+class Rung(msgspec.Struct, frozen=True, kw_only=True):
+    """One step size: the error with the half-width of its interval at the confidence C."""
+
+    steps: int
+    h: float
+    error: float | None
+    uncertainty: float | None
+    counts: bool = True
+    mean_absolute: float | None = None
+    mean_absolute_uncertainty: float | None = None
+    local_order: float | None = None
+    largest_share: float | None = None
+    non_finite: Count = 0
+
+
+class Term(msgspec.Struct, frozen=True, kw_only=True):
+    """A term of the one-step expansion: the scheme's coefficient and the SDE's, as h → 0.
+
+    `required` says whether a claim needs the two to agree.
+    """
+
+    term: str
+    at: str
+    yours: float
+    needed: float
+    difference: float
+    uncertainty: float
+    differs: bool
+    required: bool
+
+
+class Cost(msgspec.Struct, frozen=True, kw_only=True):
+    """What a measurement took; rows made from one sample name the same `sample`."""
+
+    sample: str
+    seconds: float
+    normals: Count = 0
+    paths: Count = 0
+    looks: Count = 0
+    threads: Count = 1
+
+
+class DetectionLimit(msgspec.Struct, frozen=True, kw_only=True):
+    """The smallest faults this row would have seen: a plateau, and relative ones in a and b."""
+
+    plateau: float
+    drift: float | None
+    diffusion: float | None
+
+
+class Result(msgspec.Struct, frozen=True, kw_only=True):
+    """One row of evidence on one scheme and problem.
+
+    `low, high` bound the population local order at the finest counting pair of rungs,
+    simultaneously over the run; `high` is null where there is no upper bound, all three are null
+    where there is no order. `extrapolated` is the Richardson value. `bears_on` is the claim that
+    the row is evidence for; a row that does not count is shown and decides nothing. `reference`
+    is the exact E f(X_T).
+    """
+
+    scheme: str
+    problem: str
+    kind: Kind
+    route: Route | None
+    functional: str | None
+    claimed: float | None
+    order: float | None
+    low: float | None
+    high: float | None
+    exact: bool
+    verdict: Verdict
+    sentence: str
+    rungs: list[Rung]
+    cost: Cost
+    bears_on: Literal["strong", "weak"] | None = None
+    counts: bool = True
+    extrapolated: float | None = None
+    at: Literal["horizon", "grid"] | None = None
+    reference: float | None = None
+    trusted: bool = True
+    detection_limit: DetectionLimit | None = None
+    terms: list[Term] = []
+
+
+class ClaimResult(msgspec.Struct, frozen=True, kw_only=True):
+    """The verdict on one claim, from all its rows."""
+
+    scheme: str
+    problem: str
+    kind: Literal["contract", "strong", "weak"]
+    claimed: float | None
+    order: float | None
+    low: float | None
+    high: float | None
+    exact: bool
+    verdict: Verdict
+    sentence: str
+
+
+class Provenance(msgspec.Struct, frozen=True, kw_only=True):
+    """How the evidence was made, enough to make it again to the bit."""
+
+    sdebench: str
+    numpy: str
+    python: str
+    platform: str
+    created: str
+    command: str
+    seed: int
+    confidence: float
+    tolerance: float
+    steps: list[int]
+    looks: int | None
+    budget: float | None
+    threads: int
+    seconds: float
+
+
+class Evidence(msgspec.Struct, frozen=True, kw_only=True):
+    """All that one run measured; shows itself as a table in a notebook."""
+
+    format: Literal["sdebench-evidence/1"] = FORMAT
+    verdict: Verdict
+    provenance: Provenance
+    claims: list[ClaimResult]
+    results: list[Result]
+
+    @property
+    def exit_code(self) -> int:
+        """The exit code of a command that ends on this evidence."""
+        return self.verdict.exit_code
+
+    def save(self, path: str | os.PathLike[str]) -> None:
+        """Write the evidence to `path`, whole or not at all; raises `CannotWrite`."""
+        write_whole(Path(path), msgspec.json.format(msgspec.json.encode(self), indent=2) + b"\n")
+
+    def _repr_html_(self) -> str:
+        # Reports read evidence, never the other way round: the notebook view is looked up by
+        # name when a notebook asks for it.
+        from importlib import import_module
+
+        return str(import_module("sdebench.reports.notebook").evidence_html(self))
+
+
+def load(path: str | os.PathLike[str]) -> Evidence:
+    """Return the evidence in a file; raises `BadEvidenceFile` with what is wrong in it."""
+    shown = os.fspath(path)
+    try:
+        content = Path(path).read_bytes()
+    except OSError as cause:
+        raise BadEvidenceFile(shown, cause.strerror or str(cause)) from None
+    try:
+        found = msgspec.json.decode(content, type=_Header).format
+        if found != FORMAT:
+            raise BadEvidenceFile(shown, f"its format is '{found}', this version reads '{FORMAT}'")
+        return msgspec.json.decode(content, type=Evidence)
+    except msgspec.MsgspecError as cause:
+        raise BadEvidenceFile(shown, str(cause)) from None
+
+
+class _Header(msgspec.Struct):
+    format: str
+
+
+def schema() -> dict[str, Any]:
+    """Return the JSON Schema of the evidence file."""
+    return {"$schema": "https://json-schema.org/draft/2020-12/schema"} | msgspec.json.schema(
+        Evidence
+    )
+
+
+def check_writable(path: Path) -> None:
+    """Raise `CannotWrite` unless a file can be written at `path`; leaves nothing behind."""
+    if path.is_dir():
+        raise CannotWrite(str(path), "it is a directory")
+    try:
+        with tempfile.NamedTemporaryFile(dir=path.parent, prefix=path.name, suffix=".partial"):
+            pass
+        if path.exists() and not os.access(path, os.W_OK):
+            raise CannotWrite(str(path), "it is read-only")
+    except OSError as cause:
+        raise CannotWrite(str(path), cause.strerror or str(cause)) from None
+
+
+def write_whole(path: Path, content: bytes) -> None:
+    """Write `content` to a file beside `path` and move it there in one step."""
+    try:
+        descriptor, partial = tempfile.mkstemp(dir=path.parent, prefix=path.name, suffix=".partial")
+    except OSError as cause:
+        raise CannotWrite(str(path), cause.strerror or str(cause)) from None
+    try:
+        with os.fdopen(descriptor, "wb") as file:
+            file.write(content)
+            file.flush()
+            os.fsync(file.fileno())
+        umask = os.umask(0)
+        os.umask(umask)
+        os.chmod(partial, 0o666 & ~umask)
+        os.replace(partial, path)
+    except OSError as cause:
+        raise CannotWrite(str(path), cause.strerror or str(cause)) from None
+    finally:
+        Path(partial).unlink(missing_ok=True)

@@ -1,0 +1,45 @@
+"""The ladder: the step counts of a study, each rung a whole multiple of the one above."""
+
+import math
+from collections.abc import Iterable
+from dataclasses import dataclass
+from itertools import pairwise
+
+from sdebench.errors import BadOption
+
+
+@dataclass(frozen=True)
+class Ladder:
+    """Numbers of steps over [0, T], strictly increasing; step sizes are T / steps."""
+
+    steps: tuple[int, ...]
+
+    @classmethod
+    def of(cls, steps: Iterable[int]) -> "Ladder":
+        """Return a checked ladder; raises `BadOption` unless it has three nested rungs or more."""
+        rungs = tuple(steps)
+        shown = ",".join(map(str, rungs)) or "nothing"
+        if any(isinstance(n, bool) or not isinstance(n, int) or n < 1 for n in rungs):
+            raise BadOption("steps", shown, "a number of steps is a whole number of at least 1")
+        if len(rungs) < 3:
+            raise BadOption(
+                "steps", shown, "an order needs three rungs or more, such as 8,16,32,64"
+            )
+        if any(b <= a or b % a for a, b in pairwise(rungs)):
+            raise BadOption(
+                "steps", shown, "each rung is a whole multiple of the one before, such as 8,16,32"
+            )
+        return cls(rungs)
+
+    @property
+    def ratios(self) -> tuple[int, ...]:
+        """How many steps of a rung make one of the rung before, from the second rung on."""
+        return tuple(b // a for a, b in pairwise(self.steps))
+
+    @property
+    def octaves(self) -> tuple[float, ...]:
+        """log2 of `ratios`: the distance between neighbouring rungs."""
+        return tuple(math.log2(r) for r in self.ratios)
+
+
+DEFAULT = Ladder((4, 8, 16, 32, 64))

@@ -1,0 +1,214 @@
+"""From errors on rungs to orders of convergence with intervals.
+
+Everything here works on *measures* m_r: signed weak errors (power 1) or mean squares (power 2),
+so that the error on rung r is |m_r|^(1/power), with the covariance between rungs. The local order
+between rungs c (coarse) and f (fine), k octaves apart, is log2(|m_c| / |m_f|) / (power k).
+"""
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from itertools import pairwise
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sdebench.sde import Array
+
+
+@dataclass(frozen=True)
+class Errors:
+    """Measures on the rungs of a ladder, coarsest first.
+
+    `measures` has shape `(rungs,)`, `covariance` `(rungs, rungs)` with `dof` degrees of freedom;
+    `floors` are measures below which round-off hides the error; `octaves` are the distances
+    between neighbouring rungs.
+    """
+
+    steps: tuple[int, ...]
+    octaves: tuple[float, ...]
+    measures: Array
+    covariance: Array
+    dof: int
+    power: int
+    floors: Array
+
+    @property
+    def values(self) -> Array:
+        """The errors themselves: signed for a weak error, a root mean square for a strong one."""
+        if self.power == 1:
+            return self.measures
+        return np.sqrt(np.maximum(self.measures, 0.0))
+
+    @property
+    def standard_errors(self) -> Array:
+        """Standard errors of the measures."""
+        return np.sqrt(np.maximum(np.diag(self.covariance), 0.0))
+
+    def half_widths(self, quantile: float) -> Array:
+        """Return half-widths of the intervals of `values`, for a quantile of Student's t."""
+        spread = quantile * self.standard_errors
+        if self.power == 1:
+            return spread
+        upper = np.sqrt(np.maximum(self.measures + spread, 0.0))
+        lower = np.sqrt(np.maximum(self.measures - spread, 0.0))
+        return (upper - lower) / 2
+
+    def resolved(self, quantile: float) -> NDArray[np.bool_]:
+        """Return which rungs' intervals exclude zero."""
+        return np.abs(self.measures) > quantile * self.standard_errors
+
+
+def student_quantile(alpha: float, dof: int) -> float:
+    """Return the two-sided quantile of Student's t: |T| exceeds it with probability `alpha`."""
+    from scipy.special import stdtrit
+
+    return float(-stdtrit(dof, alpha / 2))
+
+
+@dataclass(frozen=True)
+class Interval:
+    """An estimate with the interval that holds it; `high` may be infinite."""
+
+    estimate: float
+    low: float
+    high: float
+
+
+@dataclass(frozen=True)
+class Order:
+    """What the counting rungs say of the order.
+
+    `counting` are the rungs that count. `local` is the local order at the finest pair of them;
+    with three, `curbed` is the lower end of min(q, q - 2.4 (q_before - q)), `extrapolated` is
+    2 q - q_before, `moved` is q - q_before, and `before` is the local order one pair up.
+    """
+
+    counting: tuple[int, ...]
+    local: Interval
+    before: Interval | None
+    curbed: float
+    extrapolated: Interval | None
+    moved: Interval | None
+
+
+CURB = (
+    2.4  # how far a falling local order is continued; tried on noise-free ladders of honest schemes
+)
+
+
+def counting_rungs(errors: Errors, quantile: float) -> list[int]:
+    """Return the rungs that count: above round-off, and after the last change of sign.
+
+    An unresolved rung among or after the last ones of one sign counts (it still bounds); one
+    between two resolved rungs of opposite sign does not, since it may have either.
+    """
+    above = np.abs(errors.measures) > errors.floors
+    resolved = errors.resolved(quantile) & above
+    usable = [r for r in range(len(errors.steps)) if above[r] and np.isfinite(errors.measures[r])]
+    signs = [(r, errors.measures[r] > 0) for r in usable if resolved[r]]
+    if not signs:
+        return usable
+    last = signs[-1][1]
+    opposite = [r for r, sign in signs if sign != last]
+    if not opposite:
+        return usable
+    first = min(r for r, sign in signs if r > opposite[-1])
+    return [r for r in usable if r >= first]
+
+
+def observed_order(errors: Errors, counting: Sequence[int], quantile: float) -> Order | None:
+    """Return the order seen on the counting rungs, or None with fewer than two of them.
+
+    `quantile` is of Student's t for the simultaneous level.
+    """
+    if len(counting) < 2:
+        return None
+    *earlier, coarse, fine = counting
+    local = local_order(errors, coarse, fine, quantile)
+    if not earlier:
+        return Order(tuple(counting), local, None, -math.inf, None, None)
+    before = local_order(errors, earlier[-1], coarse, quantile)
+    triple = (earlier[-1], coarse, fine)
+    curbed = combined(errors, triple, (-CURB, 1 + CURB), quantile, (before, local))
+    extrapolated = combined(errors, triple, (-1.0, 2.0), quantile, (before, local))
+    moved = combined(errors, triple, (-1.0, 1.0), quantile, (before, local))
+    return Order(tuple(counting), local, before, min(local.low, curbed.low), extrapolated, moved)
+
+
+def distance(errors: Errors, coarse: int, fine: int) -> float:
+    """Return the octaves between two rungs."""
+    return sum(errors.octaves[coarse:fine])
+
+
+def local_order(errors: Errors, coarse: int, fine: int, quantile: float) -> Interval:
+    """Return the local order between two rungs, its interval from that of their ratio."""
+    scale = errors.power * distance(errors, coarse, fine)
+    m = errors.measures
+    low, high = ratio_interval(
+        float(m[coarse]),
+        float(m[fine]),
+        errors.covariance[np.ix_([coarse, fine], [coarse, fine])],
+        quantile,
+    )
+    return Interval(
+        math.log2(abs(m[coarse] / m[fine])) / scale,
+        math.log2(low) / scale if low > 0 else -math.inf,
+        math.log2(high) / scale if high < math.inf else math.inf,
+    )
+
+
+def ratio_interval(
+    top: float, bottom: float, covariance: Array, quantile: float
+) -> tuple[float, float]:
+    """Return bounds on |ratio| of two means (Fieller 1954, J. R. Stat. Soc. B 16, 175).
+
+    The set of ρ with (top - ρ bottom)² ≤ quantile² Var(top - ρ bottom); where it is not an
+    interval (the bottom may be zero) the upper bound is infinite and the lower one still holds.
+    """
+    q2 = quantile * quantile
+    a = bottom * bottom - q2 * covariance[1, 1]
+    b = top * bottom - q2 * covariance[0, 1]
+    c = top * top - q2 * covariance[0, 0]
+    root = math.sqrt(max(b * b - a * c, 0.0))
+    if c <= 0:  # the top may be zero
+        return 0.0, (math.inf if a <= 0 else (abs(b) + root) / a)
+    # The roots are c / (b ± root): no cancellation when a is near zero.
+    low = c / (abs(b) + root)
+    return low, ((abs(b) + root) / a if a > 0 else math.inf)
+
+
+SMALL = 0.25  # relative half-width up to which log2 of an error is taken as linear
+
+
+def combined(
+    errors: Errors,
+    rungs: tuple[int, int, int],
+    weights: tuple[float, float],
+    quantile: float,
+    orders: tuple[Interval, Interval],
+) -> Interval:
+    """Return weights · (earlier, later local order) over three rungs, with its interval.
+
+    Where the three measures are known to 25%, by linear propagation with their covariance
+    (a log2 ratio is then linear to within an eighth of its half-width); else from the ends of
+    the two intervals.
+    """
+    estimate = sum(w * o.estimate for w, o in zip(weights, orders, strict=True))
+    index = list(rungs)
+    m = errors.measures[index]
+    relative = quantile * errors.standard_errors[index] / np.abs(m)
+    if np.all(relative <= SMALL):
+        first, second = (
+            w / (errors.power * distance(errors, a, b))
+            for w, (a, b) in zip(weights, pairwise(rungs), strict=True)
+        )
+        gradient = np.array([first, second - first, -second]) / (m * math.log(2))
+        variance = float(gradient @ errors.covariance[np.ix_(index, index)] @ gradient)
+        spread = quantile * math.sqrt(max(variance, 0.0))
+        return Interval(estimate, estimate - spread, estimate + spread)
+    low = high = 0.0
+    for w, order in zip(weights, orders, strict=True):
+        low += w * (order.low if w > 0 else order.high)
+        high += w * (order.high if w > 0 else order.low)
+    return Interval(estimate, low, high)

@@ -1,0 +1,139 @@
+"""A scheme on a problem: its contract, its one-step evidence, and a sample that grows by looks."""
+
+import math
+import time
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import cached_property
+
+from sdebench.assess import Assessment, Levels, Row, assess, check_reference
+from sdebench.contract import Breach, first_breach
+from sdebench.integrator import Claim
+from sdebench.onestep import OneStep, measure_one_step
+from sdebench.sample import BLOCK, Plan, Sample
+from sdebench.verdict import Ruling, Verdict, overall
+
+FIRST_BLOCKS = 2  # blocks of paths in the first look; every further look doubles the sample
+
+
+@dataclass(frozen=True)
+class Local:
+    """What was found without sampling: a broken law, or one-step evidence; and the time taken."""
+
+    breach: Breach | None
+    one_step: OneStep | None
+    contract_seconds: float
+    one_step_seconds: float
+
+
+class Pair:
+    """A scheme and a problem under measurement; the plan says how they are sampled."""
+
+    def __init__(self, plan: Plan) -> None:
+        self.plan = plan
+        self.sample = Sample(plan)
+        self.looks = 0
+        self.assessments: list[Assessment] = []
+        self.local: Local | None = None
+
+    @property
+    def label(self) -> str:
+        """The scheme and the problem as typed."""
+        return f"{self.plan.scheme.label} on {self.plan.problem.label}"
+
+    @property
+    def applies(self) -> bool:
+        """Whether the problem has every functional that the scheme needs."""
+        return set(self.plan.scheme.noise) <= set(self.plan.problem.functionals)
+
+    @cached_property
+    def claims(self) -> list[Claim]:
+        """The claims on this problem's class of noise."""
+        return self.plan.scheme.claims(self.plan.problem.noise_kind)
+
+    @cached_property
+    def rows(self) -> list[Row]:
+        """The rows that sampling measures."""
+        rows: list[Row] = []
+        for claim in self.claims:
+            if claim.kind == "weak":
+                rows += [Row(claim, functional=i) for i in range(len(self.plan.functionals))]
+            else:
+                rows += [Row(claim, at="horizon")]
+                rows += [Row(claim, at="grid")] if self.plan.grid_maximum else []
+        return rows
+
+    @cached_property
+    def scale(self) -> float:
+        """The size of X, for round-off: the root mean square of X_T plus that of x0."""
+        problem = self.plan.problem
+        second, _ = problem.law(problem.params).expectation(lambda x: x * x)
+        return math.sqrt(second) + abs(problem.start)
+
+    def examine(self, tolerance: float) -> None:
+        """Check the contract and, if it holds, take one-step evidence."""
+        scheme, problem = self.plan.scheme, self.plan.problem
+        begin = time.perf_counter()
+        breach = first_breach(scheme, problem)
+        checked = time.perf_counter()
+        one_step = None
+        if breach is None:
+            one_step = measure_one_step(scheme, problem, self.claims, tolerance)
+        done = time.perf_counter()
+        self.local = Local(breach, one_step, checked - begin, done - checked)
+
+    @property
+    def sampled(self) -> bool:
+        """Whether there is anything to sample: the scheme applies and keeps its contract."""
+        return self.applies and self.local is not None and self.local.breach is None
+
+    def look(self, levels: Levels, threads: int, on_block: Callable[[], None]) -> None:
+        """Double the sample (or draw the first one) and assess every row anew."""
+        n_blocks = self.next_blocks
+        self.sample.extend(n_blocks, threads, on_block)
+        self.looks += 1
+        self.assessments = [
+            assess(self.sample, row, levels, self.looks, self.scale) for row in self.rows
+        ]
+
+    @property
+    def next_blocks(self) -> int:
+        """Blocks that the next look draws."""
+        return self.sample.n_blocks or FIRST_BLOCKS
+
+    def settled(self, levels: Levels) -> bool:
+        """Return whether more paths could change no verdict on a claim."""
+        return all(
+            not any(a.ruling.more_paths_help for a in self.bearing(claim))
+            for claim in self.claims
+            if self.one_step_ruling(claim, levels).verdict is not Verdict.REFUTED
+        )
+
+    def bearing(self, claim: Claim) -> list[Assessment]:
+        """Return the assessments that count for a claim: resolved ones, or all if none is."""
+        own = [a for a in self.assessments if a.row.claim == claim]
+        return [a for a in own if a.counts] or own
+
+    def one_step_ruling(self, claim: Claim, levels: Levels) -> Ruling:
+        """Return what one-step evidence says of a claim."""
+        assert self.local is not None
+        assert self.local.one_step is not None
+        return self.local.one_step.ruling(claim, levels.tolerance)
+
+    def claim_ruling(self, claim: Claim, levels: Levels) -> Ruling:
+        """Return the ruling on a claim from all evidence: one step may refute it alone."""
+        local = self.one_step_ruling(claim, levels)
+        if local.verdict is Verdict.REFUTED:
+            return local
+        bearing = self.bearing(claim)
+        verdict = overall([a.ruling.verdict for a in bearing])
+        return next(a.ruling for a in bearing if a.ruling.verdict is verdict)
+
+    def check(self, n_checks: int) -> None:
+        """Raise `BenchFault` if the problem's flow and law disagree on the sample."""
+        check_reference(self.sample, self.plan.functionals, n_checks)
+
+    @property
+    def n_paths(self) -> int:
+        """Paths sampled so far."""
+        return self.sample.n_blocks * BLOCK

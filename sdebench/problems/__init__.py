@@ -1,0 +1,1 @@
+"""The reference problems, one file each."""

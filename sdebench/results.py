@@ -1,0 +1,312 @@
+"""From pairs to the rows and claims of the evidence file."""
+
+import math
+
+import numpy as np
+
+from sdebench.assess import Assessment, Levels
+from sdebench.detection import Sensitivity, limits, plateau
+from sdebench.evidence import ClaimResult, Cost, DetectionLimit, Result, Rung
+from sdebench.integrator import Claim
+from sdebench.onestep import OneStep
+from sdebench.orders import local_order, student_quantile
+from sdebench.pair import Pair
+from sdebench.sde import Array
+from sdebench.verdict import Ruling, Verdict
+
+
+def results(
+    pair: Pair,
+    levels: Levels,
+    threads: int,
+    sensitivity: tuple[Sensitivity, list[Sensitivity]] | None,
+) -> list[Result]:
+    """Return the rows of a pair: contract, one-step, then what was sampled."""
+    if not pair.applies:
+        return [_not_applicable(pair, claim) for claim in pair.claims]
+    rows = [_contract(pair)]
+    if pair.sampled and sensitivity is not None:
+        rows += [_one_step(pair, claim, levels) for claim in pair.claims]
+        rows += [_sampled(pair, a, levels, threads, sensitivity) for a in pair.assessments]
+    return rows
+
+
+def claim_results(pair: Pair, levels: Levels) -> list[ClaimResult]:
+    """Return the verdict on each claim of a pair, after that on its contract if it is broken."""
+    if not pair.applies:
+        return [
+            _claim(pair, claim, Ruling(Verdict.NOT_APPLICABLE, _why_not(pair)))
+            for claim in pair.claims
+        ]
+    assert pair.local is not None
+    if pair.local.breach is not None:
+        broken = Ruling(Verdict.REFUTED, pair.local.breach.sentence)
+        unmeasured = Ruling(
+            Verdict.REFUTED, "Not measured: the step breaks its contract, so no order is its own."
+        )
+        contract = _claim(pair, None, broken)
+        return [contract, *(_claim(pair, claim, unmeasured) for claim in pair.claims)]
+    return [_claim(pair, claim, pair.claim_ruling(claim, levels), levels) for claim in pair.claims]
+
+
+def _claim(
+    pair: Pair, claim: Claim | None, ruling: Ruling, levels: Levels | None = None
+) -> ClaimResult:
+    decisive = _decisive(pair, claim, ruling) if claim is not None else None
+    order, low, high = _bounds(decisive)
+    return ClaimResult(
+        scheme=pair.plan.scheme.label,
+        problem=pair.plan.problem.label,
+        kind=claim.kind if claim is not None else "contract",
+        claimed=claim.order if claim is not None else None,
+        order=order,
+        low=low,
+        high=high,
+        exact=decisive.exact if decisive is not None else False,
+        verdict=ruling.verdict,
+        sentence=ruling.sentence,
+    )
+
+
+def _decisive(pair: Pair, claim: Claim, ruling: Ruling) -> Assessment | None:
+    """The assessment that a claim's verdict rests on: its own, else that of lowest order."""
+    bearing = pair.bearing(claim)
+    for assessment in bearing:
+        if assessment.ruling is ruling and ruling.verdict is not Verdict.SUPPORTED:
+            return assessment
+    ordered = [a for a in bearing if a.order is not None]
+    if ordered:
+        return min(ordered, key=lambda a: a.order.local.estimate if a.order else math.inf)
+    return bearing[0] if bearing else None
+
+
+def _bounds(a: Assessment | None) -> tuple[float | None, float | None, float | None]:
+    if a is None or a.order is None or (not a.trusted and a.ruling.verdict is Verdict.REFUTED):
+        return None, None, None
+    local = a.order.local
+    return local.estimate, finite(local.low), finite(local.high)
+
+
+def finite(value: float) -> float | None:
+    """Return a number as JSON can hold it: None for what is not finite."""
+    return float(value) if math.isfinite(value) else None
+
+
+def _why_not(pair: Pair) -> str:
+    scheme, problem = pair.plan.scheme, pair.plan.problem
+    missing = [name for name in scheme.noise if name not in problem.functionals]
+    return f"{problem.label} has no functional '{missing[0]}', which {scheme.label} steps by."
+
+
+def _not_applicable(pair: Pair, claim: Claim) -> Result:
+    return Result(
+        scheme=pair.plan.scheme.label,
+        problem=pair.plan.problem.label,
+        kind=claim.kind,
+        route=None,
+        functional=None,
+        claimed=claim.order,
+        order=None,
+        low=None,
+        high=None,
+        exact=False,
+        verdict=Verdict.NOT_APPLICABLE,
+        sentence=_why_not(pair),
+        rungs=[],
+        cost=Cost(sample="none", seconds=0.0),
+    )
+
+
+def _contract(pair: Pair) -> Result:
+    assert pair.local is not None
+    breach = pair.local.breach
+    return Result(
+        scheme=pair.plan.scheme.label,
+        problem=pair.plan.problem.label,
+        kind="contract",
+        route=None,
+        functional=None,
+        claimed=None,
+        order=None,
+        low=None,
+        high=None,
+        exact=False,
+        verdict=Verdict.SUPPORTED if breach is None else Verdict.REFUTED,
+        sentence="The step keeps every law of its contract." if breach is None else breach.sentence,
+        rungs=[],
+        cost=Cost(sample=f"{pair.label}, contract", seconds=pair.local.contract_seconds),
+    )
+
+
+def _one_step(pair: Pair, claim: Claim, levels: Levels) -> Result:
+    assert pair.local is not None
+    assert pair.local.one_step is not None
+    one_step = pair.local.one_step
+    ruling = one_step.ruling(claim, levels.tolerance)
+    local = one_step.strong if claim.kind == "strong" else one_step.weak
+    order = None if one_step.exact else finite(local.order)
+    return Result(
+        scheme=pair.plan.scheme.label,
+        problem=pair.plan.problem.label,
+        kind="one-step",
+        bears_on=claim.kind,
+        route="quadrature",
+        functional=None,
+        claimed=claim.order,
+        order=order,
+        low=order,
+        high=order,
+        exact=one_step.exact,
+        verdict=ruling.verdict,
+        sentence=ruling.sentence,
+        rungs=_local_rungs(one_step, claim),
+        cost=Cost(sample=f"{pair.label}, one step", seconds=pair.local.one_step_seconds),
+        terms=one_step.terms if claim.kind == "strong" else one_step.moments,
+    )
+
+
+def _local_rungs(one_step: OneStep, claim: Claim) -> list[Rung]:
+    """The local errors on the problem's own parameters, at the state where they are largest."""
+    e = one_step.expansion
+    local = e.root_mean_square if claim.kind == "strong" else e.mean_error
+    state = int(np.argmax(np.abs(local[-1])))
+    horizon = e.setting.problem.horizon
+    return [
+        Rung(
+            steps=round(horizon / float(h)),
+            h=float(h),
+            error=finite(float(local[i, state])),
+            uncertainty=float(e.floors[i, state]),
+        )
+        for i, h in enumerate(e.h)
+    ]
+
+
+def _sampled(
+    pair: Pair,
+    a: Assessment,
+    levels: Levels,
+    threads: int,
+    sensitivity: tuple[Sensitivity, list[Sensitivity]],
+) -> Result:
+    plan, claim = pair.plan, a.row.claim
+    whole = pair.claim_ruling(claim, levels)
+    # A claim that one-step evidence refutes is refuted in its sampled rows too.
+    local = pair.one_step_ruling(claim, levels)
+    ruling = whole if local.verdict is Verdict.REFUTED else a.ruling
+    order, low, high = _bounds(a)
+    extrapolated = a.order.extrapolated if a.order is not None else None
+    functional = None if a.row.functional is None else plan.functionals[a.row.functional].name
+    limit = _detection_limit(a, levels, sensitivity)
+    sentence = ruling.sentence
+    if ruling.verdict is Verdict.SUPPORTED and limit is not None:
+        sentence = f"{sentence} {_limit_sentence(limit)}"
+    return Result(
+        scheme=plan.scheme.label,
+        problem=plan.problem.label,
+        kind=claim.kind,
+        bears_on=claim.kind,
+        route="sampled",
+        functional=functional,
+        claimed=claim.order,
+        order=order,
+        low=low,
+        high=high,
+        exact=a.exact,
+        verdict=ruling.verdict,
+        sentence=sentence,
+        rungs=_rungs(pair, a, levels),
+        cost=Cost(
+            sample=pair.label,
+            seconds=pair.sample.seconds,
+            normals=pair.n_paths * plan.normals_per_path,
+            paths=pair.n_paths,
+            looks=pair.looks,
+            threads=threads,
+        ),
+        extrapolated=None if extrapolated is None else finite(extrapolated.estimate),
+        at=a.row.at,
+        reference=_reference(pair, a),
+        counts=a.counts,
+        trusted=a.trusted,
+        detection_limit=limit if ruling.verdict is Verdict.SUPPORTED else None,
+    )
+
+
+def _reference(pair: Pair, a: Assessment) -> float | None:
+    if a.row.functional is None:
+        return None
+    problem = pair.plan.problem
+    f = pair.plan.functionals[a.row.functional].function
+    return finite(problem.law(problem.params).expectation(f)[0])
+
+
+def _detection_limit(
+    a: Assessment, levels: Levels, sensitivity: tuple[Sensitivity, list[Sensitivity]]
+) -> DetectionLimit | None:
+    strong, weak = sensitivity
+    own = strong if a.row.functional is None else weak[a.row.functional]
+    if a.exact:
+        level = float(np.max(a.errors.floors)) ** (1 / a.errors.power)
+        return limits(level, own)
+    if a.order is None:
+        return None
+    needed = a.row.claim.order - levels.tolerance
+    return limits(plateau(a.errors, a.order, needed, a.quantile), own)
+
+
+def _limit_sentence(limit: DetectionLimit) -> str:
+    faults = [
+        f"{value:.2g} of the {name}"
+        for name, value in (("drift", limit.drift), ("diffusion", limit.diffusion))
+        if value is not None
+    ]
+    tail = f", a fault of {' or '.join(faults)}" if faults else ""
+    return f"Detection limit: an error of {limit.plateau:.2g} that does not shrink{tail}."
+
+
+def _rungs(pair: Pair, a: Assessment, levels: Levels) -> list[Rung]:
+    assert pair.sample.tally is not None
+    tally, errors = pair.sample.tally, a.errors
+    marginal = student_quantile(1 - levels.confidence, errors.dof)
+    values, widths = errors.values, errors.half_widths(marginal)
+    absolute, absolute_widths = _mean_absolute(pair, a, levels)
+    counting = a.order.counting if a.order is not None else ()
+    horizon = pair.plan.problem.horizon
+    rungs = []
+    for r, steps in enumerate(errors.steps):
+        rungs.append(
+            Rung(
+                steps=steps,
+                h=horizon / steps,
+                error=finite(float(values[r])),
+                uncertainty=finite(float(widths[r])),
+                counts=r in counting,
+                mean_absolute=None if absolute is None else finite(float(absolute[r])),
+                mean_absolute_uncertainty=(
+                    None if absolute_widths is None else finite(float(absolute_widths[r]))
+                ),
+                local_order=_local_order(a, r),
+                largest_share=finite(float(a.shares[r])),
+                non_finite=int(tally.non_finite[r]),
+            )
+        )
+    return rungs
+
+
+def _mean_absolute(pair: Pair, a: Assessment, levels: Levels) -> tuple[Array | None, Array | None]:
+    if a.row.at != "horizon":
+        return None, None
+    assert pair.sample.tally is not None
+    estimate = pair.sample.tally.moments.estimate(list(pair.plan.rows.absolute))
+    quantile = student_quantile(1 - levels.confidence, estimate.dof)
+    return estimate.means, quantile * np.sqrt(np.diag(estimate.covariance))
+
+
+def _local_order(a: Assessment, rung: int) -> float | None:
+    """The local order between a rung and the one before it, if both count."""
+    if a.order is None or rung == 0:
+        return None
+    if rung not in a.order.counting or rung - 1 not in a.order.counting:
+        return None
+    return finite(local_order(a.errors, rung - 1, rung, a.quantile).estimate)

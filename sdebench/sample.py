@@ -1,0 +1,213 @@
+"""The sampled route: every rung of a ladder on the same paths, against the exact solution.
+
+The functionals are drawn on the finest rung and concatenated upward; the exact end point is one
+flow over [0, T] from the fully concatenated functionals. Paths come in blocks, each with random
+streams of its own (one a functional) made from the seed, the problem and the block's number, and
+are reduced in block order: the bits depend on nothing else, least of all on threads.
+"""
+
+import hashlib
+import threading
+import time
+from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from sdebench.blame import blamed
+from sdebench.functional import Functional
+from sdebench.integrator import Scheme
+from sdebench.ladder import Ladder
+from sdebench.moments import Moments
+from sdebench.problem import Problem
+from sdebench.rows import Rows
+from sdebench.sde import SDE, Array
+from sdebench.wiener import FUNCTIONALS, Noise, Stack, StepLaw, concatenate, in_order
+
+# Paths a block: long enough that two threads seldom wait for the interpreter between two array
+# operations, short enough that the arrays of one step stay in a second-level cache.
+BLOCK = 16384
+BATCH = 512  # paths a batch mean
+WINDOW = 16  # blocks in flight, so that memory does not grow with the number of paths
+
+
+@dataclass(frozen=True)
+class Plan:
+    """What is sampled: a scheme on a problem, over a ladder, from a seed."""
+
+    scheme: Scheme
+    problem: Problem
+    ladder: Ladder
+    functionals: tuple[Functional, ...]
+    seed: int
+    grid_maximum: bool = False
+
+    @cached_property
+    def names(self) -> tuple[str, ...]:
+        """The Wiener functionals that are drawn."""
+        return in_order((*self.scheme.noise, *self.problem.flow_noise))
+
+    @cached_property
+    def rows(self) -> Rows:
+        """Where each averaged quantity stands."""
+        return Rows(len(self.ladder.steps), len(self.functionals), self.grid_maximum)
+
+    @cached_property
+    def streams(self) -> tuple[int, ...]:
+        """The problem's part of every block's seed: equal problems share their paths."""
+        p = self.problem
+        text = p.name + "".join(f";{n}={p.params[n].hex()}" for n in sorted(p.params))
+        digest = hashlib.sha256(text.encode()).digest()
+        return tuple(int.from_bytes(digest[i : i + 4], "little") for i in (0, 4))
+
+    @cached_property
+    def normals_per_path(self) -> int:
+        """Standard normals drawn for one path."""
+        return self.ladder.steps[-1] * len(self.names)
+
+
+@dataclass(frozen=True)
+class Tally:
+    """What paths add up to: batch moments, and per row the largest and the sum of squares."""
+
+    moments: Moments
+    largest: Array
+    squares: Array
+    non_finite: Array
+
+    def __add__(self, other: "Tally") -> "Tally":
+        return Tally(
+            self.moments + other.moments,
+            np.maximum(self.largest, other.largest),
+            self.squares + other.squares,
+            self.non_finite + other.non_finite,
+        )
+
+
+class Sample:
+    """A growing sample of a plan; `extend` adds blocks, `tally` is what they add up to."""
+
+    def __init__(self, plan: Plan) -> None:
+        self.plan = plan
+        self.n_blocks = 0
+        self.seconds = 0.0
+        self.tally: Tally | None = None
+        self._local = threading.local()
+
+    @property
+    def n_paths(self) -> int:
+        """Paths drawn so far."""
+        return self.n_blocks * BLOCK
+
+    def extend(
+        self, n_blocks: int, threads: int, on_block: Callable[[], None] = lambda: None
+    ) -> None:
+        """Draw `n_blocks` more blocks on `threads` threads and add them up in block order."""
+        begin = time.perf_counter()
+        last = self.n_blocks + n_blocks
+        with ThreadPoolExecutor(threads) as pool:
+            while self.n_blocks < last:
+                window = range(self.n_blocks, min(self.n_blocks + WINDOW, last))
+                for tally in pool.map(self._block, window):
+                    self.tally = tally if self.tally is None else self.tally + tally
+                    self.n_blocks += 1
+                    on_block()
+        self.seconds += time.perf_counter() - begin
+
+    def _block(self, index: int) -> Tally:
+        if not hasattr(self._local, "walk"):
+            self._local.walk = Walk(self.plan)
+        walk: Walk = self._local.walk
+        with np.errstate(all="ignore"), blamed(self.plan.scheme, "while sampling"):
+            return walk.block(index)
+
+
+class Walk:
+    """The working arrays of one thread, and the walk of one block of paths over the ladder."""
+
+    def __init__(self, plan: Plan) -> None:
+        self.plan = plan
+        steps, problem = plan.ladder.steps, plan.problem
+        self.sde = problem.sde.in_calculus(plan.scheme.calculus)
+        self.finest = StepLaw(plan.names, problem.horizon / steps[-1], problem.decay_rate)
+        self.ratios = (steps[0], *plan.ladder.ratios)
+        self.values = np.empty((plan.rows.count, BLOCK))
+        self.scratch = np.empty(BLOCK)
+        self.streams: list[np.random.Generator] = []
+        self.rungs: list[RungState] = []
+
+    def block(self, index: int) -> Tally:
+        """Return what block `index` adds up to."""
+        plan = self.plan
+        seeds = [
+            np.random.SeedSequence(
+                plan.seed, spawn_key=(*plan.streams, index, FUNCTIONALS.index(name))
+            )
+            for name in plan.names
+        ]
+        self.streams = [np.random.Generator(np.random.SFC64(seed)) for seed in seeds]
+        self.rungs = [RungState(plan, n) for n in plan.ladder.steps]
+        return self._tally(self._join(0))
+
+    def _join(self, rung: int) -> Stack:
+        """Walk as many steps of `rung` as make one of the rung before, and return that one."""
+        joined = self._step(rung)
+        for _ in range(1, self.ratios[rung]):
+            piece, h = self._step(rung), self.rungs[rung].h
+            joined = concatenate(joined, piece, h, self.plan.problem.decay_rate, out=joined)
+        return joined
+
+    def _step(self, rung: int) -> Stack:
+        """Take one step of `rung`, after the finer steps it is joined from; return its noise."""
+        if rung + 1 < len(self.rungs):
+            noise = self._join(rung + 1)
+        else:
+            noise = self.finest.from_normals([s.standard_normal(BLOCK) for s in self.streams])
+        self.rungs[rung].advance(self.plan, self.sde, noise, self.scratch)
+        return noise
+
+    def _tally(self, whole: Stack) -> Tally:
+        plan, problem, rows = self.plan, self.plan.problem, self.plan.rows
+        start = np.full(BLOCK, problem.start)
+        end = problem.exact_step(0.0, start, problem.horizon, Noise(**whole))
+        states = [rung.x for rung in self.rungs]
+        worst = [rung.worst for rung in self.rungs]
+        quadratic = [rung.quadratic for rung in self.rungs]
+        values = self.values
+        rows.fill_errors(values, states, worst, end)
+        rows.fill_weak(values, states, end, [f.function for f in plan.functionals])
+        rows.fill_controls(values, whole["dw"], quadratic, problem.horizon, plan.ladder.steps)
+        batches = values.reshape(rows.count, BLOCK // BATCH, BATCH).sum(axis=2) / BATCH
+        measured = values[: rows.n_measured]
+        return Tally(
+            Moments.of(batches),
+            np.square(np.maximum(measured.max(axis=1), -measured.min(axis=1))),
+            np.einsum("ij,ij->i", measured, measured),
+            np.array([BLOCK - np.isfinite(x).sum() for x in states]),
+        )
+
+
+class RungState:
+    """Where a block of paths stands on one rung."""
+
+    def __init__(self, plan: Plan, steps: int) -> None:
+        self.h = plan.problem.horizon / steps
+        self.n_taken = 0
+        self.x = np.full(BLOCK, plan.problem.start)
+        self.exact = self.x.copy() if plan.grid_maximum else None
+        self.worst = np.zeros(BLOCK)
+        self.quadratic = np.zeros(BLOCK)
+
+    def advance(self, plan: Plan, sde: SDE, noise: Stack, scratch: Array) -> None:
+        """Take the scheme, and on request the exact solution, one step further."""
+        t = self.n_taken * self.h
+        own = Noise(**{name: noise[name] for name in plan.scheme.noise})
+        self.x = plan.scheme.step(sde, t, self.x, self.h, own)
+        if self.exact is not None:
+            self.exact = plan.problem.exact_step(t, self.exact, self.h, Noise(**noise))
+            np.maximum(self.worst, np.abs(self.x - self.exact), out=self.worst)
+        np.multiply(noise["dw"], noise["dw"], out=scratch)
+        self.quadratic += scratch
+        self.n_taken += 1

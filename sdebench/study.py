@@ -1,0 +1,271 @@
+"""The study: schemes on problems, looked at until every claim is decided or a limit is reached."""
+
+import os
+import platform
+import shlex
+import time
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass
+from datetime import UTC, datetime
+from importlib.metadata import version
+from typing import TypeVar
+
+import numpy as np
+
+from sdebench import ladder
+from sdebench.assess import Levels
+from sdebench.detection import sensitivities
+from sdebench.discovery import (
+    find_functional,
+    find_problem,
+    find_scheme,
+    problems,
+    schemes,
+)
+from sdebench.errors import BadOption
+from sdebench.evidence import Evidence, Provenance
+from sdebench.functional import STANDARD, Functional
+from sdebench.integrator import Scheme
+from sdebench.ladder import Ladder
+from sdebench.pair import Pair
+from sdebench.problem import Problem
+from sdebench.results import claim_results, results
+from sdebench.sample import Plan
+from sdebench.sde import Array
+from sdebench.verdict import overall
+
+MAX_LOOKS = 7  # two million paths on the last look
+DEFAULT_SEED = 1
+
+Progress = Callable[[str, int, int], None]
+SchemeLike = str | Scheme
+ProblemLike = str | Problem
+Single = TypeVar("Single", Scheme, Problem)
+FunctionalLike = str | Functional | Callable[[Array], Array]
+
+
+@dataclass(frozen=True)
+class Effort:
+    """How long to look: K looks at everything, a budget in seconds, or until decided.
+
+    With `looks`, every pair is looked at exactly that often. With a budget, every pair is looked
+    at round by round until all claims are decided or the seconds are spent, so that the number of
+    rounds, which is recorded, repeats the run exactly. Else each pair stops when it is decided,
+    at the latest after `MAX_LOOKS`.
+    """
+
+    looks: int | None
+    budget: float | None
+
+    def wants(self, pair: Pair, pairs: Sequence[Pair], levels: Levels, seconds: float) -> bool:
+        """Return whether a pair is to be looked at once more, at the start of a round."""
+        if self.looks is not None:
+            return pair.looks < self.looks
+        if pair.looks == 0:
+            return True
+        if self.budget is not None:
+            return seconds < self.budget and not all(p.settled(levels) for p in pairs)
+        return pair.looks < MAX_LOOKS and not pair.settled(levels)
+
+
+def measure(
+    schemes: SchemeLike | Iterable[SchemeLike] | None = None,
+    on: ProblemLike | Iterable[ProblemLike] | None = None,
+    *,
+    steps: Iterable[int] | None = None,
+    functionals: Iterable[FunctionalLike] | None = None,
+    grid_maximum: bool = False,
+    seed: int = DEFAULT_SEED,
+    confidence: float = 0.95,
+    tolerance: float = 0.1,
+    budget: float | None = None,
+    looks: int | None = None,
+    threads: int | None = None,
+    progress: Progress | None = None,
+) -> Evidence:
+    """Return evidence and verdicts on the claims of schemes on problems.
+
+    `schemes`: registered names, `file.py:function`, or decorated functions; one or several, every
+    registered one if None. `on`: problems by name (`gbm:mu=1.5,sigma=0.5`) or as objects; every
+    one that a scheme applies to if None. `steps`: rungs of the ladder (default 4 … 64), each a
+    multiple of the one before. `functionals`: weak functionals beside mean, second moment and
+    cosine. `grid_maximum`: also the largest strong error over each rung's grid points.
+    `confidence` in (0, 1) is of the intervals; `tolerance` (in orders) of the verdicts. `budget`
+    in seconds, or `looks`, limit the effort; `threads` is the number of threads (default: the
+    processors at hand), of which the result does not depend. `progress(what, done, total)` is
+    called as work proceeds.
+
+    Raises `SdebenchError` with one clear sentence on wrong use, `BenchFault` if the bench
+    contradicts itself.
+
+    >>> import sdebench as sb
+    >>> evidence = sb.measure("milstein", on="gbm", looks=1)
+    >>> evidence.claims[0].kind, evidence.claims[0].verdict.value
+    ('strong', 'supported')
+    """
+    begin = time.monotonic()
+    _check(confidence, tolerance, seed, budget, looks, threads)
+    n_threads = threads or len(os.sched_getaffinity(0))
+    rungs = ladder.DEFAULT if steps is None else Ladder.of(steps)
+    chosen = _functionals(functionals or ())
+    plans = [
+        Plan(scheme, problem, rungs, chosen, seed, grid_maximum)
+        for scheme, problem in _chosen(schemes, on)
+    ]
+    pairs = [Pair(plan) for plan in plans]
+    levels = Levels(confidence, tolerance, sum(len(p.rows) for p in pairs if p.applies))
+    effort = Effort(looks, budget)
+    _run(pairs, levels, effort, n_threads, progress or _silent)
+    sampled = [pair for pair in pairs if pair.sampled]
+    for pair in sampled:
+        pair.check(len(sampled) * len(chosen))
+    rounds = max((pair.looks for pair in pairs), default=0)
+    claims = [claim for pair in pairs for claim in claim_results(pair, levels)]
+    found = {p.plan.problem.label: sensitivities(p.plan.problem, chosen) for p in sampled}
+    return Evidence(
+        verdict=overall([claim.verdict for claim in claims]),
+        provenance=Provenance(
+            sdebench=version("sdebench"),
+            numpy=np.__version__,
+            python=platform.python_version(),
+            platform=platform.platform(),
+            created=datetime.now(UTC).isoformat(timespec="seconds"),
+            command=_command(plans, schemes, on, levels, effort, rounds),
+            seed=seed,
+            confidence=confidence,
+            tolerance=tolerance,
+            steps=list(rungs.steps),
+            looks=rounds,
+            budget=budget,
+            threads=n_threads,
+            seconds=time.monotonic() - begin,
+        ),
+        claims=claims,
+        results=[
+            row
+            for pair in pairs
+            for row in results(pair, levels, n_threads, found.get(pair.plan.problem.label))
+        ],
+    )
+
+
+def _run(
+    pairs: Sequence[Pair], levels: Levels, effort: Effort, threads: int, progress: Progress
+) -> None:
+    """Examine every pair, then sample round by round."""
+    begin = time.monotonic()
+    applying = [pair for pair in pairs if pair.applies]
+    for done, pair in enumerate(applying):
+        progress(f"{pair.label}: contract, one step", done, len(applying))
+        pair.examine(levels.tolerance)
+    sampled = [pair for pair in applying if pair.sampled]
+    while True:
+        seconds = time.monotonic() - begin
+        wanted = [pair for pair in sampled if effort.wants(pair, sampled, levels, seconds)]
+        if not wanted:
+            return
+        count = Count(sum(pair.next_blocks for pair in wanted), progress)
+        for pair in wanted:
+            count.what = f"{pair.label}: look {pair.looks + 1}"
+            pair.look(levels, threads, count)
+
+
+@dataclass
+class Count:
+    """Blocks done in a round; calling it counts one and reports."""
+
+    total: int
+    progress: Progress
+    what: str = ""
+    done: int = 0
+
+    def __call__(self) -> None:
+        """Count a block."""
+        self.done += 1
+        self.progress(self.what, self.done, self.total)
+
+
+def _silent(what: str, done: int, total: int) -> None:
+    pass
+
+
+def _chosen(
+    given: SchemeLike | Iterable[SchemeLike] | None,
+    on: ProblemLike | Iterable[ProblemLike] | None,
+) -> list[tuple[Scheme, Problem]]:
+    """Return the pairs to measure; without a problem named, those that the scheme applies to."""
+    chosen = [find_scheme(s) for s in _several(given)] or list(schemes().values())
+    named = [find_problem(p) for p in _several(on)]
+    return [
+        (scheme, problem)
+        for scheme in chosen
+        for problem in named or list(problems().values())
+        if named or set(scheme.noise) <= set(problem.functionals)
+    ]
+
+
+def _several(given: str | Single | Iterable[str | Single] | None) -> list[str | Single]:
+    if given is None:
+        return []
+    if isinstance(given, Iterable) and not isinstance(given, str):
+        return list(given)
+    return [given]
+
+
+def _functionals(given: Iterable[FunctionalLike]) -> tuple[Functional, ...]:
+    chosen = {f.name: f for f in STANDARD}
+    for each in given:
+        functional = find_functional(each)
+        chosen[functional.name] = functional
+    return tuple(chosen.values())
+
+
+def _check(
+    confidence: float,
+    tolerance: float,
+    seed: int,
+    budget: float | None,
+    looks: int | None,
+    threads: int | None,
+) -> None:
+    """Check the plain numbers of a study; each rule is one sentence."""
+    rules: list[tuple[str, object, bool, str]] = [
+        ("confidence", confidence, 0.5 <= confidence < 1, "it lies between 0.5 and 1, as 0.95"),
+        ("tolerance", tolerance, 0 < tolerance <= 0.25, "it lies between 0 and 0.25 orders"),
+        ("seed", seed, isinstance(seed, int) and seed >= 0, "it is a whole number, 0 or more"),
+        ("budget", budget, budget is None or budget > 0, "it is a number of seconds above 0"),
+        ("looks", looks, looks is None or looks >= 1, "it is a whole number, 1 or more"),
+        ("threads", threads, threads is None or threads >= 1, "it is a whole number, 1 or more"),
+        ("looks", looks, looks is None or budget is None, "give --looks or --budget, not both"),
+    ]
+    for option, value, holds, rule in rules:
+        if not holds:
+            raise BadOption(option, value, rule)
+
+
+def _command(
+    plans: Sequence[Plan],
+    given: object,
+    on: object,
+    levels: Levels,
+    effort: Effort,
+    rounds: int,
+) -> str:
+    """Return the command that repeats a run to the bit: a budget is replaced by its rounds."""
+    words = ["sdebench", "measure"]
+    words += dict.fromkeys(plan.scheme.label for plan in plans) if given is not None else []
+    if on is not None:
+        for label in dict.fromkeys(plan.problem.label for plan in plans):
+            words += ["--on", label]
+    plan = plans[0] if plans else None
+    if plan is not None:
+        if plan.ladder != ladder.DEFAULT:
+            words += ["--steps", ",".join(map(str, plan.ladder.steps))]
+        for functional in plan.functionals[len(STANDARD) :]:
+            words += ["--functional", functional.name]
+        words += ["--grid-maximum"] if plan.grid_maximum else []
+        words += ["--seed", str(plan.seed)]
+    words += ["--confidence", f"{levels.confidence!r}", "--tolerance", f"{levels.tolerance!r}"]
+    if effort.looks is not None or effort.budget is not None:
+        words += ["--looks", str(rounds)]
+    return shlex.join(words)
