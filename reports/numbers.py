@@ -39,9 +39,15 @@ def interval(value: float | None, low: float | None, high: float | None, exact: 
         return "exact"
     if value is None:
         return ""
-    below = "any" if low is None else order(low)
-    above = "any" if high is None else order(high)
-    return f"{order(value)} ({below} to {above})"
+    width = (
+        min(abs(value - end) for end in (low, high) if end is not None)
+        if (low is not None or high is not None)
+        else 0.0
+    )
+    digits = 3 if width >= 0.001 or width == 0 else 4
+    below = "any" if low is None else f"{low:.{digits}f}"
+    above = "any" if high is None else f"{high:.{digits}f}"
+    return f"{value:.{digits}f} ({below} to {above})"
 
 
 def claimed(value: float | None) -> str:

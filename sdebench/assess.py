@@ -8,7 +8,6 @@ from typing import Literal
 import numpy as np
 
 from sdebench.errors import BadOption, BenchFault
-from sdebench.functional import Functional
 from sdebench.integrator import Claim
 from sdebench.orders import Errors, Order, counting_rungs, observed_order, student_quantile
 from sdebench.sample import Sample, Tally
@@ -121,25 +120,28 @@ def measured(sample: Sample, row: Row, scale: float) -> Errors:
     )
 
 
-def check_reference(sample: Sample, functionals: Sequence[Functional], n_checks: int) -> None:
+def check_references(
+    sample: Sample, references: Sequence[tuple[float, float]], n_checks: int
+) -> None:
     """Hold the sample's mean of each f(X_T) against the exact law; raise `BenchFault` on a miss.
 
+    `references` are E f(X_T) and its numerical uncertainty for each functional of the plan.
     `n_checks` is their number in the run, which shares the probability of a false alarm. Rows
     whose tail is not to be trusted are not compared.
     """
     assert sample.tally is not None
-    problem, tally = sample.plan.problem, sample.tally
-    law = problem.law(problem.params)
-    for index, functional in zip(sample.plan.rows.reference, functionals, strict=True):
-        exact, doubt = law.expectation(functional.function)
-        estimate = tally.moments.adjusted([index], list(sample.plan.rows.controls))
+    plan, tally = sample.plan, sample.tally
+    for index, functional, (exact, doubt) in zip(
+        plan.rows.reference, plan.functionals, references, strict=True
+    ):
+        estimate = tally.moments.adjusted([index], list(plan.rows.controls))
         bound = student_quantile(FAULT_ALARM / n_checks, estimate.dof)
         error = math.sqrt(max(float(estimate.covariance[0, 0]), 0.0))
         allowed = bound * error + doubt + ROUND_OFF * abs(exact)
         share = tally.largest[index] / tally.squares[index] if tally.squares[index] else 0.0
         if share <= TRUSTED_SHARE and abs(estimate.means[0] - exact) > allowed:
             raise BenchFault(
-                f"The bench contradicts itself on {problem.label}: the exact law gives "
+                f"The bench contradicts itself on {plan.problem.label}: the exact law gives "
                 f"E {functional.name} = {exact:.9g}, its flow sampled on {sample.n_paths} paths "
                 f"{estimate.means[0]:.9g} ± {error:.2g}. Trust no "
                 "verdict of this run, and report it."

@@ -80,14 +80,13 @@ class Order:
     """What the counting rungs say of the order.
 
     `counting` are the rungs that count. `local` is the local order at the finest pair of them;
-    with three, `curbed` is the lower end of min(q, q - 2.4 (q_before - q)), `extrapolated` is
-    2 q - q_before, `moved` is q - q_before, and `before` is the local order one pair up.
+    with three, `curbed` is min(q, q - 2.4 (q_before - q)), where a falling order would lead,
+    `extrapolated` is 2 q - q_before, and `moved` is q - q_before.
     """
 
     counting: tuple[int, ...]
     local: Interval
-    before: Interval | None
-    curbed: float
+    curbed: Interval | None
     extrapolated: Interval | None
     moved: Interval | None
 
@@ -127,13 +126,22 @@ def observed_order(errors: Errors, counting: Sequence[int], quantile: float) -> 
     *earlier, coarse, fine = counting
     local = local_order(errors, coarse, fine, quantile)
     if not earlier:
-        return Order(tuple(counting), local, None, -math.inf, None, None)
+        return Order(tuple(counting), local, None, None, None)
     before = local_order(errors, earlier[-1], coarse, quantile)
     triple = (earlier[-1], coarse, fine)
-    curbed = combined(errors, triple, (-CURB, 1 + CURB), quantile, (before, local))
-    extrapolated = combined(errors, triple, (-1.0, 2.0), quantile, (before, local))
-    moved = combined(errors, triple, (-1.0, 1.0), quantile, (before, local))
-    return Order(tuple(counting), local, before, min(local.low, curbed.low), extrapolated, moved)
+    orders = (before, local)
+    falling = combined(errors, triple, (-CURB, 1 + CURB), quantile, orders)
+    return Order(
+        tuple(counting),
+        local,
+        curbed=Interval(*(min(pair) for pair in zip(_ends(falling), _ends(local), strict=True))),
+        extrapolated=combined(errors, triple, (-1.0, 2.0), quantile, orders),
+        moved=combined(errors, triple, (-1.0, 1.0), quantile, orders),
+    )
+
+
+def _ends(interval: Interval) -> tuple[float, float, float]:
+    return interval.estimate, interval.low, interval.high
 
 
 def distance(errors: Errors, coarse: int, fine: int) -> float:

@@ -3,10 +3,10 @@
 import math
 import time
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
-from sdebench.assess import Assessment, Levels, Row, assess, check_reference
+from sdebench.assess import Assessment, Levels, Row, assess, check_references
 from sdebench.contract import Breach, first_breach
 from sdebench.integrator import Claim
 from sdebench.onestep import OneStep, measure_one_step
@@ -70,6 +70,12 @@ class Pair:
         second, _ = problem.law(problem.params).expectation(lambda x: x * x)
         return math.sqrt(second) + abs(problem.start)
 
+    @cached_property
+    def references(self) -> list[tuple[float, float]]:
+        """The exact E f(X_T) of each functional, with its numerical uncertainty."""
+        law = self.plan.problem.law(self.plan.problem.params)
+        return [law.expectation(f.function) for f in self.plan.functionals]
+
     def examine(self, tolerance: float) -> None:
         """Check the contract and, if it holds, take one-step evidence."""
         scheme, problem = self.plan.scheme, self.plan.problem
@@ -120,18 +126,29 @@ class Pair:
         assert self.local.one_step is not None
         return self.local.one_step.ruling(claim, levels.tolerance)
 
+    def decisive(self, claim: Claim) -> Assessment:
+        """Return the assessment that the verdict on a claim rests on, of the lowest order."""
+        bearing = self.bearing(claim)
+        verdict = overall([a.ruling.verdict for a in bearing])
+        return min(
+            (a for a in bearing if a.ruling.verdict is verdict),
+            key=lambda a: a.order.local.estimate if a.order is not None else math.inf,
+        )
+
     def claim_ruling(self, claim: Claim, levels: Levels) -> Ruling:
         """Return the ruling on a claim from all evidence: one step may refute it alone."""
         local = self.one_step_ruling(claim, levels)
         if local.verdict is Verdict.REFUTED:
             return local
-        bearing = self.bearing(claim)
-        verdict = overall([a.ruling.verdict for a in bearing])
-        return next(a.ruling for a in bearing if a.ruling.verdict is verdict)
+        decisive = self.decisive(claim)
+        if decisive.row.functional is None:
+            return decisive.ruling
+        name = self.plan.functionals[decisive.row.functional].name
+        return replace(decisive.ruling, sentence=f"{name}: {decisive.ruling.sentence}")
 
     def check(self, n_checks: int) -> None:
         """Raise `BenchFault` if the problem's flow and law disagree on the sample."""
-        check_reference(self.sample, self.plan.functionals, n_checks)
+        check_references(self.sample, self.references, n_checks)
 
     @property
     def n_paths(self) -> int:

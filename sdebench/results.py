@@ -34,25 +34,25 @@ def results(
 def claim_results(pair: Pair, levels: Levels) -> list[ClaimResult]:
     """Return the verdict on each claim of a pair, after that on its contract if it is broken."""
     if not pair.applies:
-        return [
-            _claim(pair, claim, Ruling(Verdict.NOT_APPLICABLE, _why_not(pair)))
-            for claim in pair.claims
-        ]
+        ruling = Ruling(Verdict.NOT_APPLICABLE, _why_not(pair))
+        return [_claim(pair, claim, ruling, None) for claim in pair.claims]
     assert pair.local is not None
     if pair.local.breach is not None:
         broken = Ruling(Verdict.REFUTED, pair.local.breach.sentence)
         unmeasured = Ruling(
             Verdict.REFUTED, "Not measured: the step breaks its contract, so no order is its own."
         )
-        contract = _claim(pair, None, broken)
-        return [contract, *(_claim(pair, claim, unmeasured) for claim in pair.claims)]
-    return [_claim(pair, claim, pair.claim_ruling(claim, levels), levels) for claim in pair.claims]
+        rest = [_claim(pair, claim, unmeasured, None) for claim in pair.claims]
+        return [_claim(pair, None, broken, None), *rest]
+    return [
+        _claim(pair, claim, pair.claim_ruling(claim, levels), pair.decisive(claim))
+        for claim in pair.claims
+    ]
 
 
 def _claim(
-    pair: Pair, claim: Claim | None, ruling: Ruling, levels: Levels | None = None
+    pair: Pair, claim: Claim | None, ruling: Ruling, decisive: Assessment | None
 ) -> ClaimResult:
-    decisive = _decisive(pair, claim, ruling) if claim is not None else None
     order, low, high = _bounds(decisive)
     return ClaimResult(
         scheme=pair.plan.scheme.label,
@@ -66,18 +66,6 @@ def _claim(
         verdict=ruling.verdict,
         sentence=ruling.sentence,
     )
-
-
-def _decisive(pair: Pair, claim: Claim, ruling: Ruling) -> Assessment | None:
-    """The assessment that a claim's verdict rests on: its own, else that of lowest order."""
-    bearing = pair.bearing(claim)
-    for assessment in bearing:
-        if assessment.ruling is ruling and ruling.verdict is not Verdict.SUPPORTED:
-            return assessment
-    ordered = [a for a in bearing if a.order is not None]
-    if ordered:
-        return min(ordered, key=lambda a: a.order.local.estimate if a.order else math.inf)
-    return bearing[0] if bearing else None
 
 
 def _bounds(a: Assessment | None) -> tuple[float | None, float | None, float | None]:
@@ -196,7 +184,7 @@ def _sampled(
     ruling = whole if local.verdict is Verdict.REFUTED else a.ruling
     order, low, high = _bounds(a)
     extrapolated = a.order.extrapolated if a.order is not None else None
-    functional = None if a.row.functional is None else plan.functionals[a.row.functional].name
+    index = a.row.functional
     limit = _detection_limit(a, levels, sensitivity)
     sentence = ruling.sentence
     if ruling.verdict is Verdict.SUPPORTED and limit is not None:
@@ -207,7 +195,7 @@ def _sampled(
         kind=claim.kind,
         bears_on=claim.kind,
         route="sampled",
-        functional=functional,
+        functional=None if index is None else plan.functionals[index].name,
         claimed=claim.order,
         order=order,
         low=low,
@@ -226,19 +214,11 @@ def _sampled(
         ),
         extrapolated=None if extrapolated is None else finite(extrapolated.estimate),
         at=a.row.at,
-        reference=_reference(pair, a),
+        reference=None if index is None else finite(pair.references[index][0]),
         counts=a.counts,
         trusted=a.trusted,
         detection_limit=limit if ruling.verdict is Verdict.SUPPORTED else None,
     )
-
-
-def _reference(pair: Pair, a: Assessment) -> float | None:
-    if a.row.functional is None:
-        return None
-    problem = pair.plan.problem
-    f = pair.plan.functionals[a.row.functional].function
-    return finite(problem.law(problem.params).expectation(f)[0])
 
 
 def _detection_limit(

@@ -105,7 +105,7 @@ def measure(
     """
     begin = time.monotonic()
     _check(confidence, tolerance, seed, budget, looks, threads)
-    n_threads = threads or len(os.sched_getaffinity(0))
+    n_threads = threads or _processors()
     rungs = ladder.DEFAULT if steps is None else Ladder.of(steps)
     chosen = _functionals(functionals or ())
     plans = [
@@ -183,6 +183,12 @@ class Count:
         """Count a block."""
         self.done += 1
         self.progress(self.what, self.done, self.total)
+
+
+def _processors() -> int:
+    if hasattr(os, "sched_getaffinity"):
+        return len(os.sched_getaffinity(0))
+    return os.cpu_count() or 1
 
 
 def _silent(what: str, done: int, total: int) -> None:

@@ -72,10 +72,10 @@ def judge(
     needed = claimed - tolerance
     if order is None:
         return _too_few(errors, counting)
-    if order.curbed > needed:
-        return Ruling(Verdict.SUPPORTED, f"{seen(errors, order)}, claimed {claimed:g}.")
-    if len(order.counting) < 3 or order.extrapolated is None or order.moved is None:
+    if order.curbed is None or order.extrapolated is None or order.moved is None:
         return _too_few(errors, order.counting)
+    if order.curbed.low > needed:
+        return Ruling(Verdict.SUPPORTED, f"{seen(errors, order)}, claimed {claimed:g}.")
     below = order.local.high < needed and order.extrapolated.high < needed
     settled = order.moved.high < tolerance / 2
     finest = errors.steps[order.counting[-1]]
@@ -85,7 +85,7 @@ def judge(
         return Ruling(Verdict.REFUTED, sentence)
     if below and settled:
         return _too_few(errors, order.counting)
-    return _unsettled(errors, order, needed, tolerance)
+    return _unsettled(errors, order, order.curbed, order.moved, needed, tolerance)
 
 
 def seen(errors: Errors, order: Order) -> str:
@@ -103,25 +103,44 @@ def shown(interval: Interval) -> str:
     return f"{interval.estimate:.{digits}f} ({low} {high})"
 
 
-def _unsettled(errors: Errors, order: Order, needed: float, tolerance: float) -> Ruling:
+def _unsettled(
+    errors: Errors,
+    order: Order,
+    curbed: Interval,
+    moved: Interval,
+    needed: float,
+    tolerance: float,
+) -> Ruling:
     """The order is neither clearly high enough nor clearly too low: noise, or too coarse rungs."""
-    assert order.extrapolated is not None
-    assert order.moved is not None
-    straddles = order.local.low <= needed < order.local.high
-    width = order.local.high - order.local.low
-    noisy = straddles or width > tolerance / 2 or not math.isfinite(width)
-    trend = order.moved.estimate
-    unclear = order.moved.low < tolerance / 2 < order.moved.high
-    if noisy or unclear or (order.local.low > needed and trend > -tolerance / 2):
-        sentence = f"{seen(errors, order)}: too wide to tell from {needed:g}; more paths would."
-        return Ruling(Verdict.UNDECIDED, sentence, more_paths_help=True)
-    direction = "rising" if trend > 0 else "falling"
+    finer_rungs = f"the rungs are too coarse to tell; try --steps {finer(errors.steps)}."
+    if order.local.low > needed and curbed.estimate <= needed:
+        return Ruling(
+            Verdict.UNDECIDED,
+            f"{seen(errors, order)}, but falling by {-moved.estimate:.2g} from the pair before: "
+            f"{finer_rungs}",
+            more_paths_help=curbed.high > needed,
+        )
+    if order.local.high < needed and moved.low > tolerance / 2:
+        return Ruling(
+            Verdict.UNDECIDED,
+            f"{seen(errors, order)}, but rising by {moved.estimate:.2g} from the pair before: "
+            f"{finer_rungs}",
+        )
     return Ruling(
         Verdict.UNDECIDED,
-        f"{seen(errors, order)}, still {direction} (by {abs(trend):.2f} over the pair before): "
-        f"the rungs are too coarse; try --steps {finer(errors.steps)}.",
-        more_paths_help=order.moved.low < 0 < order.moved.high,
+        f"{seen(errors, order)}: too wide to tell it from {needed:g}; "
+        f"{_more_paths(curbed, needed)}.",
+        more_paths_help=True,
     )
+
+
+def _more_paths(curbed: Interval, needed: float) -> str:
+    """Say how many times the paths would tell, since a width shrinks with their square root."""
+    gap, reach = curbed.estimate - needed, curbed.estimate - curbed.low
+    if not 0 < gap < reach < math.inf:
+        return "more paths would (each look doubles them: --looks)"
+    times = 2 ** math.ceil(2 * math.log2(reach / gap))
+    return f"some {times} times the paths would (each look doubles them: --looks)"
 
 
 def _too_few(errors: Errors, counting: Sequence[int]) -> Ruling:

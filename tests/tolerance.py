@@ -1,5 +1,7 @@
 """Tolerances, each derived from round-off, a stated uncertainty, or a false-alarm probability."""
 
+from decimal import Decimal
+
 import numpy as np
 from scipy import stats
 
@@ -14,6 +16,11 @@ def round_off(scale: float, operations: int) -> float:
 def printed(last_digit: float) -> float:
     """Return half a unit of the last digit that a source prints."""
     return last_digit / 2
+
+
+def as_printed(text: str) -> float:
+    """Return half a unit of the last digit of a decimal number as a source prints it."""
+    return printed(10.0 ** int(Decimal(text).as_tuple().exponent))
 
 
 def sampling(standard_error: float, dof: float = np.inf, false_alarm: float = FALSE_ALARM) -> float:

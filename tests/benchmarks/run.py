@@ -1,0 +1,187 @@
+"""Speed and memory, each as a ratio of two things measured in one run.
+
+    python tests/benchmarks/run.py
+
+Times are medians of ratios over alternating repetitions, since machines drift. Not part of pass
+or fail; the aim stands beside each figure.
+"""
+
+import statistics
+import subprocess
+import sys
+import time
+from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import replace
+
+import numpy as np
+
+import sdebench as sb
+from sdebench.discovery import find_problem, find_scheme
+from sdebench.functional import STANDARD
+from sdebench.ladder import DEFAULT
+from sdebench.sample import BLOCK, Plan, Sample
+
+REPEATS = 7
+N_BLOCKS = 16
+
+
+def main() -> None:
+    """Print every benchmark."""
+    for name, aim in (("euler-maruyama", 2.0), ("milstein", 2.5)):
+        for threads in (1, 2):
+            sampled_ladder(name, aim, threads)
+    hand_written("euler-maruyama")
+    hand_written("milstein")
+    speed_up("euler-maruyama")
+    speed_up("milstein")
+    controls()
+    memory()
+    start_up()
+
+
+def sampled_ladder(name: str, aim: float, threads: int) -> None:
+    """Whole time of the default ladder over the time of drawing the same normals."""
+    plan = plan_of(name)
+    still = replace(plan, scheme=replace(plan.scheme, step=_stay))
+    whole, overhead = [], []
+    for _ in range(REPEATS):
+        normals = seconds(lambda: draw_normals(plan, threads))
+        whole.append(seconds(lambda: sample(plan, threads)) / normals)
+        overhead.append(seconds(lambda: sample(still, threads)) / normals - 1)
+    show(f"{name} on gbm, {threads} thread(s): whole / normals", whole, f"at most {aim}")
+    show(f"{name} on gbm, {threads} thread(s): own overhead / normals", overhead, "at most 0.3")
+
+
+def hand_written(name: str) -> None:
+    """The bench over a vectorised script for the same rungs, paths and functionals."""
+    plan = plan_of(name)
+    ratios = [
+        seconds(lambda: sample(plan, 1)) / seconds(lambda: script(plan, name == "milstein"))
+        for _ in range(REPEATS)
+    ]
+    show(f"{name} on gbm, 1 thread: bench / hand-written NumPy script", ratios, "below 1")
+
+
+def speed_up(name: str) -> None:
+    """One thread over two."""
+    plan = plan_of(name)
+    ratios = [
+        seconds(lambda: sample(plan, 1)) / seconds(lambda: sample(plan, 2)) for _ in range(REPEATS)
+    ]
+    show(f"{name} on gbm: speed-up from 1 to 2 threads", ratios, "1.8")
+
+
+def controls() -> None:
+    """Variance of the weak error of the mean without the controls over that with them."""
+    for name in ("euler-maruyama", "milstein"):
+        taken = sample(plan_of(name), 2)
+        assert taken.tally is not None
+        rows = taken.plan.rows
+        finest = [rows.weak(0)[-1]]
+        plain = taken.tally.moments.estimate(finest).covariance[0, 0]
+        adjusted = taken.tally.moments.adjusted(finest, list(rows.controls)).covariance[0, 0]
+        print(f"{name} on gbm, 64 steps: paths saved by the controls: {plain / adjusted:.0f} times")
+
+
+def memory() -> None:
+    """Peak memory at ten million paths over that at a hundred thousand."""
+    small, large = (peak_memory(n) for n in (10**5, 10**7))
+    print(f"peak memory, 1e7 paths / 1e5 paths: {large / small:.3f}   (aim: 1)")
+
+
+def start_up() -> None:
+    """`sdebench --help` over importing NumPy."""
+    help_page = [sys.executable, "-m", "sdebench", "--help"]
+    numpy = [sys.executable, "-c", "import numpy"]
+    ratios = [run(help_page) / run(numpy) for _ in range(2 * REPEATS)]
+    show("sdebench --help / python -c 'import numpy'", ratios, "2")
+
+
+def plan_of(name: str) -> Plan:
+    """Return the default plan of a scheme on GBM."""
+    return Plan(find_scheme(name), find_problem("gbm"), DEFAULT, STANDARD, seed=1)
+
+
+def sample(plan: Plan, threads: int) -> Sample:
+    """Draw a sample of the benchmark's size."""
+    taken = Sample(plan)
+    taken.extend(N_BLOCKS, threads)
+    return taken
+
+
+def draw_normals(plan: Plan, threads: int) -> None:
+    """Draw as many normals as a sample, in arrays of the same size, and nothing else."""
+
+    def block(index: int) -> None:
+        stream = np.random.Generator(np.random.SFC64(index))
+        array = np.empty(BLOCK)
+        for _ in range(plan.normals_per_path):
+            stream.standard_normal(out=array)
+
+    with ThreadPoolExecutor(threads) as pool:
+        list(pool.map(block, range(N_BLOCKS)))
+
+
+def script(plan: Plan, milstein: bool) -> list[float]:
+    """What a practitioner writes: all increments at once, a loop a rung, means and slopes."""
+    p = plan.problem.params
+    mu, sigma, x0, horizon = p["mu"], p["sigma"], p["x0"], p["horizon"]
+    n_paths, finest = N_BLOCKS * BLOCK, plan.ladder.steps[-1]
+    rng = np.random.default_rng(1)
+    dw = rng.normal(0.0, np.sqrt(horizon / finest), size=(finest, n_paths))
+    exact = x0 * np.exp((mu - sigma**2 / 2) * horizon + sigma * dw.sum(axis=0))
+    results = []
+    for steps in plan.ladder.steps:
+        h = horizon / steps
+        coarse = dw.reshape(steps, finest // steps, n_paths).sum(axis=1)
+        x = np.full(n_paths, x0)
+        for w in coarse:
+            b = sigma * x
+            change = mu * x * h + b * w
+            if milstein:
+                change += 0.5 * sigma * b * (w**2 - h)
+            x = x + change
+        results.append(float(np.sqrt(np.mean((x - exact) ** 2))))
+        for f in (lambda y: y, lambda y: y**2, np.cos):
+            results.append(float(np.mean(f(x) - f(exact))))
+    return results
+
+
+def _stay(sde: sb.SDE, t: float, x: sb.Array, h: float, noise: sb.Noise) -> sb.Array:
+    """A step that costs nothing: what is left is the bench's own work."""
+    return x
+
+
+def seconds(work: Callable[[], object]) -> float:
+    """Return how long `work` takes."""
+    begin = time.perf_counter()
+    work()
+    return time.perf_counter() - begin
+
+
+def run(command: list[str]) -> float:
+    """Return how long a command takes."""
+    return seconds(lambda: subprocess.run(command, check=True, capture_output=True))
+
+
+def peak_memory(n_paths: int) -> float:
+    """Return the peak resident memory of a process that samples so many paths."""
+    code = (
+        "import resource; from tests.benchmarks.run import plan_of; "
+        "from sdebench.sample import BLOCK, Sample; s = Sample(plan_of('euler-maruyama')); "
+        f"s.extend(-(-{n_paths} // BLOCK), 2); "
+        "print(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss)"
+    )
+    command = [sys.executable, "-c", code]
+    return float(subprocess.run(command, check=True, capture_output=True, text=True).stdout)
+
+
+def show(what: str, ratios: list[float], aim: str) -> None:
+    """Print the median of some ratios with their range and the aim."""
+    middle = statistics.median(ratios)
+    print(f"{what}: {middle:.2f} ({min(ratios):.2f} to {max(ratios):.2f})   (aim: {aim})")
+
+
+if __name__ == "__main__":
+    main()
