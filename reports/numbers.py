@@ -1,6 +1,7 @@
 """Numbers as people read them: cut where the uncertainty begins."""
 
 import math
+from decimal import Decimal
 
 
 def with_uncertainty(value: float | None, half_width: float | None) -> str:
@@ -16,7 +17,7 @@ def with_uncertainty(value: float | None, half_width: float | None) -> str:
     if not half_width or not math.isfinite(half_width):
         return f"{value:.6g}"
     place = math.floor(math.log10(half_width))
-    if half_width / 10.0**place < 1.95:
+    if Decimal(half_width).scaleb(-place) < Decimal("1.95"):
         place -= 1
     size = max(abs(value), half_width)
     if 1e-4 <= size < 1e6:
@@ -24,8 +25,8 @@ def with_uncertainty(value: float | None, half_width: float | None) -> str:
         return f"{value:.{digits}f} ± {half_width:.{digits}f}"
     exponent = math.floor(math.log10(size))
     digits = max(exponent - place, 0)
-    scaled = 10.0**-exponent
-    return f"({value * scaled:.{digits}f} ± {half_width * scaled:.{digits}f})e{exponent:+03d}"
+    scaled, spread = (Decimal(x).scaleb(-exponent) for x in (value, half_width))
+    return f"({scaled:.{digits}f} ± {spread:.{digits}f})e{exponent:+03d}"
 
 
 def order(value: float | None) -> str:

@@ -25,7 +25,7 @@ def claims_table(evidence: Evidence) -> Table:
         (
             claim.scheme,
             claim.problem,
-            claim.kind,
+            f"{claim.kind}, {claim.functional}" if claim.functional else claim.kind,
             numbers.claimed(claim.claimed),
             numbers.interval(claim.order, claim.low, claim.high, claim.exact),
             claim.verdict.value,
@@ -70,7 +70,7 @@ def terms_table(result: Result) -> Table:
         )
         for term in result.terms
     ]
-    title = f"{result.scheme} on {result.problem}, one step: leading terms as h → 0"
+    title = f"{result.scheme} on {result.problem}, one step, {result.bears_on}: limits as h → 0"
     headings = ("term", "yours", "the SDE", "", "where")
     return Table(title, headings, rows, frozenset({1, 2}))
 
@@ -81,11 +81,13 @@ def refuted_by_terms(result: Result) -> bool:
     return result.kind == "one-step" and result.verdict is Verdict.REFUTED and wrong
 
 
-def _coefficient(value: float, term: Term) -> str:
+def _coefficient(value: float | None, term: Term) -> str:
+    if value is None or term.uncertainty is None:
+        return "NaN"
     return "0" if abs(value) <= term.uncertainty else f"{value:.6g}"
 
 
 def _judgement(term: Term) -> str:
     if not term.differs:
         return "agrees"
-    return "differs" if term.required else "differs, not needed"
+    return "differs" if term.required else "beyond the claim"

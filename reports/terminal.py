@@ -3,9 +3,11 @@
 Plain text where the output is no terminal; colours are left out where NO_COLOR is set.
 """
 
+import os
 import sys
 from collections.abc import Callable, Iterable, Iterator
 from contextlib import contextmanager
+from itertools import groupby
 from time import monotonic
 from typing import TextIO
 
@@ -26,25 +28,40 @@ from sdebench.verdict import Verdict
 
 Report = Callable[[str, int, int], None]
 STYLES = {"supported": "green", "refuted": "bold red", "undecided": "yellow"}
-PLAIN_WIDTH = 200  # columns where the output is no terminal: rows are not folded
+PLAIN_WIDTH = 10_000  # columns where the output is no terminal: rows are not folded
+
+
+class Page(Console):
+    """A console whose reader may leave: the process then ends as if by the signal."""
+
+    def on_broken_pipe(self) -> None:
+        """End quietly, with the exit code of a process that a closed pipe ends."""
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        raise SystemExit(141)
 
 
 def console(stream: TextIO | None = None) -> Console:
     """Return a console on `stream` (standard output by default)."""
-    found = Console(file=stream or sys.stdout, highlight=False, emoji=False, markup=False)
+    found = Page(file=stream or sys.stdout, highlight=False, emoji=False, markup=False)
     if not found.is_terminal:
         found.width = PLAIN_WIDTH
     return found
 
 
-def show_evidence(evidence: Evidence, on: Console) -> None:
-    """Print the claims, a sentence on each that is not supported, and the tables behind it."""
-    show_table(claims_table(evidence), on)
-    single = len({(claim.scheme, claim.problem) for claim in evidence.claims}) == 1
+def show_sentences(evidence: Evidence, on: Console) -> None:
+    """Print a sentence on each claim that is not supported."""
     for claim in evidence.claims:
         if claim.verdict is not Verdict.SUPPORTED:
-            on.print()
             _show_sentence(claim, on)
+
+
+def show_evidence(evidence: Evidence, on: Console) -> None:
+    """Print the claims, a sentence on each that is not supported, and the tables behind it."""
+    _show_claims(claims_table(evidence), on)
+    single = len({(claim.scheme, claim.problem) for claim in evidence.claims}) == 1
+    if any(claim.verdict is not Verdict.SUPPORTED for claim in evidence.claims):
+        on.print()
+        show_sentences(evidence, on)
     shown = [row for row in evidence.results if single or _explains(row, evidence)]
     for row in shown:
         if row.terms and (single or refuted_by_terms(row)):
@@ -63,12 +80,30 @@ def show_table(table: Table, on: Console) -> None:
     """Print a table without rules: headings, then aligned rows."""
     if table.title:
         on.print(Text(table.title, style="bold"), soft_wrap=True)
+    on.print(_grid(table))
+
+
+def _show_claims(table: Table, on: Console) -> None:
+    """Print the claims as one table; where it is too wide, under a heading for each pair."""
+    widths = [max(map(len, column)) + 2 for column in zip(table.headings, *table.rows, strict=True)]
+    if sum(widths) <= on.width:
+        show_table(table, on)
+        return
+    for pair, rows in groupby(table.rows, key=lambda row: row[:2]):
+        own = [row[2:] for row in rows]
+        numeric = frozenset(i - 2 for i in table.numeric)
+        show_table(Table(" on ".join(pair), table.headings[2:], own, numeric), on)
+
+
+def _grid(table: Table) -> Grid:
     grid = Grid(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="dim")
     for i, heading in enumerate(table.headings):
-        grid.add_column(Text(heading), justify="right" if i in table.numeric else "left")
+        grid.add_column(
+            Text(heading), justify="right" if i in table.numeric else "left", overflow="fold"
+        )
     for row in table.rows:
         grid.add_row(*(Text(cell, style=STYLES.get(cell, "")) for cell in row))
-    on.print(grid)
+    return grid
 
 
 @contextmanager
@@ -78,14 +113,14 @@ def progress_bar(on: Console, quiet: bool) -> Iterator[Report | None]:
         yield None
         return
     begin = monotonic()
-    columns = (TextColumn("{task.description}"), BarColumn(), TaskProgressColumn())
+    columns = (TextColumn("{task.description}", markup=False), BarColumn(), TaskProgressColumn())
     bar = Progress(*columns, console=on, transient=True)
     task = bar.add_task("", total=None)
 
     def report(what: str, done: int, total: int) -> None:
         if not bar.live.is_started and monotonic() - begin > 1.0:
             bar.start()
-        bar.update(task, description=Text(what).plain, completed=done, total=total)
+        bar.update(task, description=what, completed=done, total=total)
 
     try:
         yield report

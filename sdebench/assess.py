@@ -7,12 +7,12 @@ from typing import Literal
 
 import numpy as np
 
-from sdebench.errors import BadOption, BenchFault
+from sdebench.errors import BadFunctional, BenchFault
 from sdebench.integrator import Claim
 from sdebench.orders import Errors, Order, counting_rungs, observed_order, student_quantile
 from sdebench.sample import Sample, Tally
 from sdebench.sde import Array
-from sdebench.verdict import Ruling, Verdict, judge
+from sdebench.verdict import Ruling, Verdict, finer, judge
 
 # The largest share of one path in the sum of squares with which an interval is trusted. Measured
 # on geometric Brownian motion with rising volatility: nominal 95% intervals cover 92% or more with
@@ -82,15 +82,24 @@ def assess(sample: Sample, row: Row, levels: Levels, look: int, scale: float) ->
         shares = np.nan_to_num(tally.largest[index] / tally.squares[index])
     size = np.sqrt(np.abs(tally.moments.mean[list(rows.squares)]))
     exact = bool(np.all(size <= _floors(sample, scale)))
-    counting = counting_rungs(errors, quantile)
+    # An error as large as the solution is that of an unstable step size, and no convergence.
+    counting = [r for r in counting_rungs(errors, quantile) if size[r] <= scale]
     order = None if exact else observed_order(errors, counting, quantile)
     trusted = exact or bool(np.all(shares <= TRUSTED_SHARE))
     n_resolved = int(np.sum(errors.resolved(quantile)))
     ruling = (
-        _overflow(sample, tally, row, errors)
+        _overflow(sample, tally, row, errors, size, scale)
         or _exact(exact)
         or _distrust(trusted, shares, errors)
-        or judge(errors, order, counting, row.claim.order, levels.tolerance)
+        or judge(
+            errors,
+            order,
+            counting,
+            row.claim.order,
+            levels.tolerance,
+            look,
+            n_resolved < len(errors.steps),
+        )
     )
     counts = exact or n_resolved >= 2 or ruling.verdict is Verdict.REFUTED
     return Assessment(row, errors, order, quantile, exact, counts, trusted, shares, ruling)
@@ -159,18 +168,34 @@ def _floors(sample: Sample, scale: float) -> Array:
     return ROUND_OFF * scale * np.array(sample.plan.ladder.steps, dtype=float)
 
 
-def _overflow(sample: Sample, tally: Tally, row: Row, errors: Errors) -> Ruling | None:
-    if np.all(np.isfinite(errors.measures)) and not tally.non_finite.any():
+def _overflow(
+    sample: Sample, tally: Tally, row: Row, errors: Errors, size: Array, scale: float
+) -> Ruling | None:
+    """Rule on NaN and infinity: a fault on some paths, unless a rung is unstable (or all paths)."""
+    lost = tally.non_finite
+    if np.all(np.isfinite(errors.measures)) and not lost.any():
         return None
-    if not tally.non_finite.any() and row.functional is not None:
-        name = sample.plan.functionals[row.functional].name
-        raise BadOption("functional", name, "it gives NaN or infinity at an end point")
-    rung = int(np.argmax(tally.non_finite))
+    if row.functional is not None:
+        reference = sample.plan.rows.reference[row.functional]
+        if not math.isfinite(float(tally.moments.mean[reference])):
+            raise BadFunctional(
+                sample.plan.functionals[row.functional].name,
+                "gives NaN or infinity at an end point",
+            )
+    some = (lost > 0) & (lost < sample.n_paths)
+    if some.any() and not np.any(size > scale):
+        rung = int(np.argmax(some))
+        return Ruling(
+            Verdict.REFUTED,
+            f"{lost[rung]} of {sample.n_paths} paths end in NaN or infinity with "
+            f"{errors.steps[rung]} steps: keep square roots, logarithms and divisions of the step "
+            "inside their domain on rare paths too.",
+        )
+    rung = int(np.argmax(~np.isfinite(errors.measures) | (lost > 0)))
     return Ruling(
-        Verdict.REFUTED,
-        f"{max(int(tally.non_finite[rung]), 1)} of {sample.n_paths} paths end in NaN or infinity "
-        f"with {errors.steps[rung]} steps: keep square roots, logarithms and divisions of the "
-        "step inside their domain on rare paths too.",
+        Verdict.UNDECIDED,
+        f"The errors overflow with {errors.steps[rung]} steps: the scheme is unstable with steps "
+        f"as long as these; try --steps {finer(errors.steps)}, or finer still.",
     )
 
 
@@ -185,7 +210,7 @@ def _distrust(trusted: bool, shares: Array, errors: Errors) -> Ruling | None:
     return Ruling(
         Verdict.UNDECIDED,
         f"One path makes up {shares[rung]:.0%} of the sum of squares with {errors.steps[rung]} "
-        "steps: with so heavy a tail the interval is not to be trusted, and nothing is decided "
-        "on it; measure on milder parameters, or over a shorter horizon.",
+        "steps: the interval is not to be trusted with so heavy a tail, and nothing is decided on "
+        "it. More paths may help (--looks), milder parameters or a shorter horizon will.",
         more_paths_help=True,
     )

@@ -1,17 +1,16 @@
-"""Whose mistake an exception is: a user's step is shown its own frames, ours are not hidden."""
+"""Whose mistake an exception is: a user's function is shown its own frames, ours are not hidden."""
 
 import inspect
 import sysconfig
 import traceback
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 
-from sdebench.errors import SchemeRaised, SdebenchError
-from sdebench.integrator import Scheme
+from sdebench.errors import SdebenchError, UserCodeRaised
 
 # Code of ours, of Python and of installed packages: never the user's own frames, unless the
-# scheme itself lives there.
+# function itself lives there.
 _NOT_USERS = (
     str(Path(__file__).parent),
     *(sysconfig.get_paths()[k] for k in ("stdlib", "purelib")),
@@ -19,31 +18,39 @@ _NOT_USERS = (
 
 
 @contextmanager
-def blamed(scheme: Scheme, where: str) -> Iterator[None]:
-    """Turn an exception raised by the step of `scheme` into `SchemeRaised`.
+def blamed(name: str, function: Callable[..., object], where: str) -> Iterator[None]:
+    """Turn an exception raised by a user's `function` into `UserCodeRaised`.
 
-    It shows the frames of the scheme's file and of other files of the user's. An exception that
-    never passed through any is a fault of ours and goes on unchanged.
+    `name` and `where` say in its sentence what raised and when. It shows the frames of the
+    function's file and of other files of the user's. An exception that never passed through any
+    is a fault of ours and goes on unchanged. An attempt to exit is an exception like any other.
     """
     try:
         yield
     except SdebenchError:
         raise
-    except Exception as cause:
-        own = _file(scheme)
-        frames = [
-            frame
-            for frame in traceback.extract_tb(cause.__traceback__)
-            if frame.filename == own or not frame.filename.startswith(_NOT_USERS)
-        ]
+    except (Exception, SystemExit) as cause:
+        own = _file(function)
+        frames = users_frames(cause, own)
         if not any(frame.filename == own for frame in frames):
             raise
-        text = "".join(traceback.format_list(frames))
-        raise SchemeRaised(scheme.label, where, cause, text) from cause
+        raise UserCodeRaised(name, where, cause, frames) from cause
 
 
-def _file(scheme: Scheme) -> str:
+def users_frames(cause: BaseException, own: str) -> list[traceback.FrameSummary]:
+    """Return the frames of an exception in the file `own` and in other files of the user's."""
+    return [
+        frame
+        for frame in traceback.extract_tb(cause.__traceback__)
+        if frame.filename == own or not frame.filename.startswith((*_NOT_USERS, "<frozen"))
+    ]
+
+
+def _file(function: Callable[..., object]) -> str:
     try:
-        return inspect.getfile(inspect.unwrap(scheme.step))
+        return inspect.getfile(inspect.unwrap(function))
     except TypeError:  # a callable object: its class has the file
-        return inspect.getfile(type(scheme.step))
+        try:
+            return inspect.getfile(type(function))
+        except TypeError:  # built in: nothing of the user's
+            return ""

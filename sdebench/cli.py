@@ -5,7 +5,6 @@ Exit codes: 0 every claim supported; 1 a claim refuted; 2 wrong use or bad input
 """
 
 import json
-import os
 import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -90,6 +89,7 @@ def measure(
     from sdebench.reports import terminal
     from sdebench.study import measure as run
 
+    tell_faults()
     if save is not None:
         check_writable(save)
     with terminal.progress_bar(terminal.console(sys.stderr), quiet) as progress:
@@ -98,8 +98,8 @@ def measure(
         )
     if save is not None:
         evidence.save(save)
-    if not quiet or evidence.exit_code:
-        terminal.show_evidence(evidence, terminal.console())
+    show = terminal.show_sentences if quiet else terminal.show_evidence
+    show(evidence, terminal.console())
     sys.exit(evidence.exit_code)
 
 
@@ -112,6 +112,7 @@ def catalogue() -> None:
     from sdebench.reports import terminal
 
     out = terminal.console()
+    tell_faults()
     found = discovery.schemes().values(), discovery.problems().values()
     for table in tables.catalogue(*found, STANDARD):
         terminal.show_table(table, out)
@@ -122,8 +123,17 @@ def catalogue() -> None:
 def schema() -> None:
     """Print the JSON Schema of the evidence file."""
     from sdebench.evidence import schema as evidence_schema
+    from sdebench.reports import terminal
 
-    click.echo(json.dumps(evidence_schema(), indent=2))
+    terminal.console().print(json.dumps(evidence_schema(), indent=2), soft_wrap=True)
+
+
+def tell_faults() -> None:
+    """Tell on standard error what installed packages offer and cannot be had."""
+    from sdebench import discovery
+
+    for fault in discovery.schemes().faults:
+        click.echo(f"sdebench: {fault}", err=True)
 
 
 @contextmanager
@@ -137,9 +147,6 @@ def told() -> Iterator[None]:
     except KeyboardInterrupt:
         click.echo("sdebench: interrupted; nothing was written.", err=True)
         sys.exit(130)
-    except BrokenPipeError:
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        sys.exit(141)
 
 
 def main() -> None:

@@ -5,8 +5,9 @@ are tried at the start and inside the horizon, on typical states and on the oute
 quadrature that one-step evidence uses.
 """
 
-from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass, replace
 from enum import Enum
 
 import numpy as np
@@ -15,11 +16,11 @@ from sdebench import probe
 from sdebench.blame import blamed
 from sdebench.integrator import Scheme
 from sdebench.problem import Problem
-from sdebench.sde import SDE, Array
-from sdebench.wiener import Noise, Stack, StepLaw, gauss_hermite
+from sdebench.sde import Array, Coefficient
+from sdebench.trial import N_PATHS, Trial, scaled, trials
+from sdebench.wiener import Noise
 
-N_PATHS = 16384  # as many as a sample's block, so that code that cuts large arrays is seen
-N_OUTER = 40  # the quadrature whose outermost nodes are tried
+N_ROUNDS = 5  # times that four threads call the step at once
 ROUND_OFF = 64 * float(np.finfo(float).eps)  # some 64 operations a step, relative to its terms
 
 
@@ -46,6 +47,10 @@ class Law(Enum):
         "lets one path depend on others (by {seen})",
         "use only element-wise operations on x and noise: no mean, sort, roll or shared state",
     )
+    OWN_ARRAYS = (
+        "overwrites what another call of it has made (by {seen})",
+        "share no working arrays between calls: several threads call the step at once",
+    )
     ITS_NOISE = (
         "gives the same result whatever its noise",
         "use the functionals in `noise`, and no other source of randomness",
@@ -69,64 +74,26 @@ class Breach:
     sentence: str
 
 
-@dataclass(frozen=True)
-class Trial:
-    """One input of a step: a time, a step length, states and noise of shape `(paths,)`."""
-
-    sde: SDE
-    t: float
-    x: Array
-    h: float
-    noise: Stack
-
-    def run(self, scheme: Scheme, part: slice | None = None) -> Array:
-        """Return the step's result on fresh copies, of all paths or of a part of them."""
-        part = slice(None) if part is None else part
-        noise = Noise(**{name: values[part].copy() for name, values in self.noise.items()})
-        return scheme.step(self.sde, self.t, self.x[part].copy(), self.h, noise)
-
-    def at(self, path: int | None = None) -> str:
-        """Return where this is, for a sentence."""
-        where = f"at t={self.t:g}, h={self.h:g}"
-        if path is None:
-            return where
-        values = ", ".join(f"{name}={v[path]:.6g}" for name, v in self.noise.items())
-        return f"{where}, x={self.x[path]:.6g}, {values}"
-
-    @property
-    def scale(self) -> Array:
-        """The size of a step's terms, path by path, for round-off."""
-        a, b = self.sde.drift(self.t, self.x), self.sde.diffusion(self.t, self.x)
-        noise = np.sum([np.abs(v) for v in self.noise.values()], axis=0)
-        size: Array = np.abs(self.x) + np.abs(a) * self.h + np.abs(b) * noise + abs(self.sde.start)
-        return size
-
-
 def first_breach(scheme: Scheme, problem: Problem) -> Breach | None:
-    """Return the first law that the scheme breaks on the problem, or None if it keeps all."""
-    with np.errstate(all="ignore"), blamed(scheme, "when its contract was checked"):
-        trials = list(_trials(scheme, problem))
+    """Return the first law that the scheme breaks on the problem, or None if it keeps all.
+
+    Other parameters than the problem's own are tried for shape and finite results only.
+    """
+    checked = blamed(f"Scheme '{scheme.label}'", scheme.step, "when its contract was checked")
+    with np.errstate(all="ignore"), checked:
+        for each in probe.parameter_sets(problem)[1:]:
+            told = ", ".join(f"{name}={each.params[name]:.6g}" for name in each.values)
+            for trial in trials(scheme, each, f", {told}"):
+                breach = _shape(scheme, trial) or _finite(scheme, trial)
+                if breach is not None:
+                    return breach
+        own = list(trials(scheme, problem))
         for check in CHECKS:
-            for trial in trials:
+            for trial in own:
                 breach = check(scheme, trial)
                 if breach is not None:
                     return breach
     return None
-
-
-def _trials(scheme: Scheme, problem: Problem) -> Iterator[Trial]:
-    sde = problem.sde.in_calculus(scheme.calculus)
-    rng = np.random.default_rng(7)
-    for t in probe.times(problem):
-        for h in (problem.horizon / 8, problem.horizon / 512):
-            law = StepLaw(scheme.noise, h, problem.decay_rate)
-            normals = [rng.standard_normal(N_PATHS) for _ in law.names]
-            outer = gauss_hermite(N_OUTER)[0][[0, -1]]
-            for row in normals:
-                row[:2] = outer
-            noise = law.from_normals(normals)
-            x = np.resize(probe.states(problem), N_PATHS)
-            yield Trial(sde, t, x, h, {name: noise[name] for name in scheme.noise})
 
 
 def _shape(scheme: Scheme, trial: Trial) -> Breach | None:
@@ -158,11 +125,59 @@ def _finite(scheme: Scheme, trial: Trial) -> Breach | None:
 
 
 def _same_bits(scheme: Scheme, trial: Trial) -> Breach | None:
-    first = trial.run(scheme)
+    none = np.zeros(N_PATHS)
+    returned = trial.run(scheme)
+    first = returned.copy()
     other = Trial(trial.sde, trial.t, trial.x[::-1], trial.h / 2, trial.noise)
     other.run(scheme, slice(0, 7))
-    again = trial.run(scheme)
-    return _differing(Law.SAME_BITS, trial, first, again, np.zeros_like(first))
+    # Twice, so that what changes with every second call is seen as well.
+    for again in (trial.run(scheme), trial.run(scheme)):
+        breach = _differing(Law.SAME_BITS, trial, first, again, none)
+        if breach is not None:
+            return breach
+    other.run(scheme)
+    return _differing(Law.OWN_ARRAYS, trial, first, returned, none)
+
+
+def _own_arrays(scheme: Scheme, trial: Trial) -> Breach | None:
+    """A sample calls the step from several threads at once: working arrays must not be shared.
+
+    First with coefficients that have another thread take a step before they return, which meets
+    every array kept across them; then with steps at once, which meet the others nearly always.
+    """
+    none = np.zeros(N_PATHS)
+    factors = (1.0, -0.9, 1.1, 0.8)
+    inputs = [
+        Trial(trial.sde, trial.t, (1 + 0.001 * i) * trial.x, trial.h, scaled(trial.noise, factor))
+        for i, factor in enumerate(factors)
+    ]
+    alone = [each.run(scheme) for each in inputs]
+
+    with ThreadPoolExecutor(len(inputs)) as pool:
+
+        def interrupted(coefficient: Coefficient) -> Coefficient:
+            def value(t: float, x: Array) -> Array:
+                pool.submit(inputs[1].run, scheme).result()
+                return coefficient(t, x)
+
+            return value
+
+        sde = replace(
+            trial.sde,
+            drift=interrupted(trial.sde.drift),
+            diffusion=interrupted(trial.sde.diffusion),
+            diffusion_dx=interrupted(trial.sde.diffusion_dx),
+        )
+        found = [replace(inputs[0], sde=sde).run(scheme)]
+        wanted = alone[:1]
+        for _ in range(N_ROUNDS):
+            found += pool.map(lambda each: each.run(scheme), inputs)
+            wanted += alone
+    for right, own in zip(wanted, found, strict=True):
+        breach = _differing(Law.OWN_ARRAYS, trial, right, own, none)
+        if breach is not None:
+            return breach
+    return None
 
 
 def _own_path(scheme: Scheme, trial: Trial) -> Breach | None:
@@ -171,7 +186,7 @@ def _own_path(scheme: Scheme, trial: Trial) -> Breach | None:
     exact = np.zeros(N_PATHS)
     loose = ROUND_OFF * trial.scale
     for kept in (slice(0, half), slice(half, None)):
-        moved = Trial(trial.sde, trial.t, 1.01 * trial.x, trial.h, _scaled(trial.noise, -0.9))
+        moved = Trial(trial.sde, trial.t, 1.01 * trial.x, trial.h, scaled(trial.noise, -0.9))
         moved.x[kept] = trial.x[kept]
         for name in trial.noise:
             moved.noise[name][kept] = trial.noise[name][kept]
@@ -189,22 +204,22 @@ def _own_path(scheme: Scheme, trial: Trial) -> Breach | None:
 
 def _its_noise(scheme: Scheme, trial: Trial) -> Breach | None:
     moves = np.abs(trial.sde.diffusion(trial.t, trial.x)) > 0
-    other = Trial(trial.sde, trial.t, trial.x, trial.h, _scaled(trial.noise, -0.9))
-    same = moves & (trial.run(scheme) == other.run(scheme))
-    same &= sum(np.abs(v) for v in trial.noise.values()) > 0
-    if same.sum() <= moves.sum() // 2:
+    moves &= np.sum([np.abs(v) for v in trial.noise.values()], axis=0) > 0
+    other = Trial(trial.sde, trial.t, trial.x, trial.h, scaled(trial.noise, -0.9))
+    same = trial.run(scheme) == other.run(scheme)
+    if not np.any(moves) or not np.all(same[moves]):
         return None
-    return _breach(Law.ITS_NOISE, "", trial, int(np.flatnonzero(same)[0]))
+    return _breach(Law.ITS_NOISE, "", trial, int(np.flatnonzero(moves)[0]))
 
 
 def _no_step(scheme: Scheme, trial: Trial) -> Breach | None:
-    """In the limit: schemes without derivatives divide by √h, so that h = 0 itself is no input.
+    """In the limit: schemes without derivatives divide by √h or by dw, so that 0 is no input.
 
-    A step of length h without noise moves by terms of order √h at the most; at h = 2^-80 T these
-    are far below round-off of x for coefficients up to 10^8.
+    A step of length h moves by terms of order √h at the most; for h = 2^-200 T these are some
+    10^-30 √T, far below round-off of x for any coefficients. The noise is scaled alike.
     """
-    h = trial.sde.horizon * 2.0**-80
-    still = Trial(trial.sde, trial.t, trial.x, h, _scaled(trial.noise, 0.0))
+    h = trial.sde.horizon * 2.0**-200
+    still = Trial(trial.sde, trial.t, trial.x, h, scaled(trial.noise, (h / trial.h) ** 0.5))
     tolerance = ROUND_OFF * trial.scale
     return _differing(Law.NO_STEP, still, trial.x, still.run(scheme), tolerance)
 
@@ -215,13 +230,10 @@ CHECKS: tuple[Callable[[Scheme, Trial], Breach | None], ...] = (
     _finite,
     _same_bits,
     _own_path,
+    _own_arrays,
     _its_noise,
     _no_step,
 )
-
-
-def _scaled(noise: Stack, factor: float) -> dict[str, Array]:
-    return {name: factor * values for name, values in noise.items()}
 
 
 def _differing(

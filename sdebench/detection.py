@@ -25,7 +25,7 @@ CLEAR = 4.0  # a sensitivity below this many standard errors is not told from no
 
 @dataclass(frozen=True)
 class Sensitivity:
-    """Change of an error per relative change of drift and diffusion; None where there is none."""
+    """Change of an error per relative change of drift and diffusion; None or 0 where none."""
 
     drift: float | None
     diffusion: float | None
@@ -45,7 +45,7 @@ def plateau(errors: Errors, order: Order, needed: float, quantile: float) -> flo
 def limits(level: float, sensitivity: Sensitivity) -> DetectionLimit:
     """Return a plateau as a detection limit, with the relative faults that would cause it."""
     drift, diffusion = (
-        None if s is None else level / s for s in (sensitivity.drift, sensitivity.diffusion)
+        level / s if s else None for s in (sensitivity.drift, sensitivity.diffusion)
     )
     return DetectionLimit(plateau=level, drift=drift, diffusion=diffusion)
 

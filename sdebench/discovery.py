@@ -3,23 +3,25 @@
 A scheme is any module-level `Scheme` (what the decorator makes): in a module of `sdebench.schemes`,
 in an object or a module that an installed package names under the entry-point group
 `sdebench.schemes`, or in a user's file `my.py:function`. All three are collected by one function.
+What an installed package offers and cannot be had is told, and the others go on.
 """
 
 import hashlib
 import importlib
 import importlib.util
+import os
 import pkgutil
 import sys
-import traceback
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 from functools import lru_cache
-from importlib.metadata import entry_points
+from importlib.metadata import EntryPoint, entry_points
 from pathlib import Path
 from types import ModuleType
 from typing import Any, TypeVar
 
-from sdebench.errors import SdebenchError, UnknownName, UserFileError
+from sdebench.blame import users_frames
+from sdebench.errors import SdebenchError, UnknownName, UserCodeRaised, UserFileError
 from sdebench.functional import STANDARD, Functional
 from sdebench.integrator import Scheme
 from sdebench.problem import Problem
@@ -39,16 +41,30 @@ def schemes() -> Registry[Scheme]:
         for scheme in collect(module, Scheme):
             registry.add(scheme, module.__name__)
     for point in entry_points(group=SCHEMES):
-        loaded = point.load()
-        found = collect(loaded, Scheme) if isinstance(loaded, ModuleType) else [loaded]
-        for scheme in found:
-            if not isinstance(scheme, Scheme):
-                raise UserFileError(
-                    f"The entry point '{point.name}' ({point.value}) is no scheme: "
-                    "write @scheme(strong=..., weak=...) above the function it names."
-                )
-            registry.add(scheme, point.value)
+        try:
+            for scheme in _offered(point):
+                registry.add(scheme, point.value)
+        except SdebenchError as fault:
+            registry.faults.append(str(fault))
     return registry
+
+
+def _offered(point: EntryPoint) -> list[Scheme]:
+    """Return what an installed package offers: one scheme, or all of a module."""
+    place = f"The entry point '{point.name}' ({point.value})"
+    try:
+        loaded = point.load()
+    except (Exception, SystemExit) as cause:
+        raise UserFileError(
+            f"{place} cannot be loaded: {type(cause).__name__}: {cause}."
+        ) from cause
+    if isinstance(loaded, ModuleType):
+        return collect(loaded, Scheme, own=False)
+    if not isinstance(loaded, Scheme):
+        raise UserFileError(
+            f"{place} is no scheme: write @scheme(strong=..., weak=...) above the function."
+        )
+    return [loaded]
 
 
 @lru_cache(maxsize=1)
@@ -61,9 +77,11 @@ def problems() -> Registry[Problem]:
     return registry
 
 
-def collect(module: ModuleType, kind: type[Kind]) -> list[Kind]:
-    """Return the things of a kind that a module defines, in its order."""
+def collect(module: ModuleType, kind: type[Kind], own: bool = True) -> list[Kind]:
+    """Return the things of a kind in a module, in its order; only its `own` or also imported."""
     found = [value for value in vars(module).values() if isinstance(value, kind)]
+    if not own:
+        return found
     return [each for each in found if getattr(each, "module", module.__name__) == module.__name__]
 
 
@@ -71,13 +89,18 @@ def find_scheme(given: str | Scheme) -> Scheme:
     """Return a scheme from a registered name, from `file.py:function`, or as it is given."""
     if isinstance(given, Scheme):
         return given
-    if callable(given):
+    if not isinstance(given, str) and not callable(given):
+        raise UserFileError(f"{given!r} is no scheme: give a name, file.py:function, or a scheme.")
+    if not isinstance(given, str):
         raise UserFileError(
             f"{getattr(given, '__name__', 'This function')} claims no order: write "
             "@scheme(strong=..., weak=...) above it."
         )
     if _is_file(given):
         return replace(_scheme_in_file(given), typed=given)
+    stem, colon, name = given.rpartition(":")
+    if colon:
+        raise UserFileError(f"'{given}' names no file: write '{stem}.py:{name}'.")
     return schemes()[given]
 
 
@@ -92,6 +115,8 @@ def find_problem(given: str | Problem, **parameters: float) -> Problem:
     """
     if isinstance(given, Problem):
         return given.with_parameters(parameters) if parameters else given
+    if not isinstance(given, str):
+        raise UserFileError(f"{given!r} is no problem: give a name, such as 'gbm:mu=1.5'.")
     name, _, settings = given.partition(":")
     found = problems()[name]
     values: dict[str, object] = {}
@@ -99,6 +124,8 @@ def find_problem(given: str | Problem, **parameters: float) -> Problem:
         key, equals, value = setting.partition("=")
         if not equals or not value.strip():
             raise UserFileError(f"'{setting}' in '{given}' sets nothing: write parameter=value.")
+        if key.strip() in values:
+            raise UserFileError(f"'{given}' sets {key.strip()} twice.")
         values[key.strip()] = value.strip()
     if values or not parameters:
         found = found.with_parameters(values, typed=given)
@@ -170,25 +197,26 @@ def load_file(path: str) -> ModuleType:
     assert spec.loader is not None
     module = importlib.util.module_from_spec(spec)
     folder = str(file.resolve().parent)
+    before = set(sys.modules)
     sys.path.insert(0, folder)
     sys.modules[name] = module
     try:
         spec.loader.exec_module(module)
     except SyntaxError as cause:
-        raise UserFileError(
-            f"'{path}' does not parse: {cause.msg}, line {cause.lineno}: "
-            f"{(cause.text or '').strip()}"
-        ) from None
-    except SdebenchError:
-        raise
-    except Exception as cause:
-        frames = [f for f in traceback.extract_tb(cause.__traceback__) if f.filename == str(file)]
-        shown = "".join(traceback.format_list(frames)).rstrip()
-        raise UserFileError(
-            f"'{path}' raised {type(cause).__name__} when loaded: {cause}\n{shown}"
-        ) from cause
+        line = f", line {cause.lineno}: {(cause.text or '').strip()}" if cause.lineno else ""
+        where = path if cause.filename in (None, str(module.__file__)) else cause.filename
+        raise UserFileError(f"'{where}' does not parse: {cause.msg}{line}.") from None
+    except SdebenchError as fault:
+        raise UserFileError(f"'{path}': {fault}") from fault
+    except (Exception, SystemExit) as cause:
+        frames = users_frames(cause, str(module.__file__))
+        raise UserCodeRaised(f"'{path}'", "when loaded", cause, frames) from cause
     finally:
         sys.path.remove(folder)
+        # Another file's sibling of the same name must not be given this one's.
+        for key in set(sys.modules) - before - {name}:
+            if str(getattr(sys.modules[key], "__file__", None)).startswith(folder + os.sep):
+                del sys.modules[key]
     return module
 
 

@@ -5,6 +5,7 @@ a bad input and ends a command with exit code 2; `BenchFault` says that the benc
 itself and ends it with 4.
 """
 
+import traceback
 from collections.abc import Iterable, Sequence
 from difflib import get_close_matches
 
@@ -56,6 +57,23 @@ class BadClaim(SdebenchError):
         super().__init__(f"Scheme '{scheme}' claims {claim}={value!r}: {rule}.")
 
 
+class BadStep(SdebenchError):
+    """A function that cannot be a step, told before it is called."""
+
+    def __init__(self, name: str, why: str) -> None:
+        super().__init__(f"'{name}' {why}: a step is f(sde, t, x, h, noise) and returns the new x.")
+
+
+class BadFunctional(SdebenchError):
+    """A functional whose values cannot be averaged."""
+
+    def __init__(self, name: str, why: str) -> None:
+        super().__init__(
+            f"Functional '{name}' {why}: it takes an array of end points, leaves it as it is, and "
+            "returns an array of finite numbers of the same shape."
+        )
+
+
 class BadOption(SdebenchError):
     """An option of a study whose value cannot be used."""
 
@@ -78,13 +96,19 @@ class UserFileError(SdebenchError):
     """A user's file that is missing, does not parse, fails to load, or lacks what was named."""
 
 
-class SchemeRaised(SdebenchError):
-    """A step that raised; carries the user's own frames only."""
+class UserCodeRaised(SdebenchError):
+    """A step, a functional or a file of the user's that raised, with the user's own frames."""
 
-    def __init__(self, scheme: str, where: str, cause: BaseException, frames: str) -> None:
-        super().__init__(
-            f"Scheme '{scheme}' raised {type(cause).__name__} {where}: {cause}\n{frames}".rstrip()
-        )
+    def __init__(
+        self,
+        name: str,
+        where: str,
+        cause: BaseException,
+        frames: Sequence[traceback.FrameSummary],
+    ) -> None:
+        shown = "".join(traceback.format_list(list(frames)))
+        said = f": {cause}" if str(cause) else ""
+        super().__init__(f"{name} raised {type(cause).__name__} {where}{said}\n{shown}".rstrip())
 
 
 class BadEvidenceFile(SdebenchError):

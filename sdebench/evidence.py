@@ -4,6 +4,7 @@ The types are the schema: what they cannot hold is not written and not read. Fil
 written whole or not at all.
 """
 
+import math
 import os
 import tempfile
 from pathlib import Path
@@ -38,15 +39,15 @@ class Rung(msgspec.Struct, frozen=True, kw_only=True):
 class Term(msgspec.Struct, frozen=True, kw_only=True):
     """A term of the one-step expansion: the scheme's coefficient and the SDE's, as h → 0.
 
-    `required` says whether a claim needs the two to agree.
+    `required` says whether a claim needs the two to agree. Null stands for what is not finite.
     """
 
     term: str
     at: str
-    yours: float
-    needed: float
-    difference: float
-    uncertainty: float
+    yours: float | None
+    needed: float | None
+    difference: float | None
+    uncertainty: float | None
     differs: bool
     required: bool
 
@@ -105,7 +106,10 @@ class Result(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class ClaimResult(msgspec.Struct, frozen=True, kw_only=True):
-    """The verdict on one claim, from all its rows."""
+    """The verdict on one claim, from all its rows.
+
+    `order`, `low`, `high` are of the row that decides; if it is weak, `functional` names it.
+    """
 
     scheme: str
     problem: str
@@ -117,6 +121,7 @@ class ClaimResult(msgspec.Struct, frozen=True, kw_only=True):
     exact: bool
     verdict: Verdict
     sentence: str
+    functional: str | None = None
 
 
 class Provenance(msgspec.Struct, frozen=True, kw_only=True):
@@ -176,12 +181,19 @@ def load(path: str | os.PathLike[str]) -> Evidence:
         if found != FORMAT:
             raise BadEvidenceFile(shown, f"its format is '{found}', this version reads '{FORMAT}'")
         return msgspec.json.decode(content, type=Evidence)
+    except RecursionError:
+        raise BadEvidenceFile(shown, "it is nested too deeply") from None
     except msgspec.MsgspecError as cause:
         raise BadEvidenceFile(shown, str(cause)) from None
 
 
 class _Header(msgspec.Struct):
     format: str
+
+
+def finite(value: float) -> float | None:
+    """Return a number as JSON can hold it: None for what is not finite."""
+    return float(value) if math.isfinite(value) else None
 
 
 def schema() -> dict[str, Any]:
@@ -193,24 +205,31 @@ def schema() -> dict[str, Any]:
 
 def check_writable(path: Path) -> None:
     """Raise `CannotWrite` unless a file can be written at `path`; leaves nothing behind."""
-    if path.is_dir():
-        raise CannotWrite(str(path), "it is a directory")
     try:
-        with tempfile.NamedTemporaryFile(dir=path.parent, prefix=path.name, suffix=".partial"):
+        target = path.resolve()
+        if target.exists() and not target.is_file():
+            kind = "a directory" if target.is_dir() else "no regular file"
+            raise CannotWrite(str(path), f"it is {kind}")
+        with tempfile.NamedTemporaryFile(dir=target.parent, prefix=target.name, suffix=".partial"):
             pass
-        if path.exists() and not os.access(path, os.W_OK):
+        if target.exists() and not os.access(target, os.W_OK):
             raise CannotWrite(str(path), "it is read-only")
     except OSError as cause:
         raise CannotWrite(str(path), cause.strerror or str(cause)) from None
 
 
 def write_whole(path: Path, content: bytes) -> None:
-    """Write `content` to a file beside `path` and move it there in one step."""
+    """Write `content` to a file beside `path` and move it there in one step.
+
+    A link stays a link: what it points to is replaced.
+    """
+    check_writable(path)
+    target = path.resolve()
+    partial = None
     try:
-        descriptor, partial = tempfile.mkstemp(dir=path.parent, prefix=path.name, suffix=".partial")
-    except OSError as cause:
-        raise CannotWrite(str(path), cause.strerror or str(cause)) from None
-    try:
+        descriptor, partial = tempfile.mkstemp(
+            dir=target.parent, prefix=target.name, suffix=".partial"
+        )
         with os.fdopen(descriptor, "wb") as file:
             file.write(content)
             file.flush()
@@ -218,8 +237,9 @@ def write_whole(path: Path, content: bytes) -> None:
         umask = os.umask(0)
         os.umask(umask)
         os.chmod(partial, 0o666 & ~umask)
-        os.replace(partial, path)
+        os.replace(partial, target)
     except OSError as cause:
         raise CannotWrite(str(path), cause.strerror or str(cause)) from None
     finally:
-        Path(partial).unlink(missing_ok=True)
+        if partial is not None:
+            Path(partial).unlink(missing_ok=True)

@@ -1,11 +1,12 @@
 """The scheme: a pure one-step map, the functionals it needs, the orders it claims."""
 
+import inspect
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Literal, Protocol
 
-from sdebench.errors import BadClaim, BadOption, UnknownName
+from sdebench.errors import BadClaim, BadOption, BadStep, UnknownName
 from sdebench.sde import SDE, Array, Calculus, NoiseKind
 from sdebench.wiener import FUNCTIONALS, Noise
 
@@ -67,6 +68,8 @@ class Scheme:
 
 
 def scheme(
+    step: object = None,
+    /,
     *,
     strong: float | None = None,
     weak: float | None = None,
@@ -90,9 +93,14 @@ def scheme(
     'plain-euler'
     """
 
+    if step is not None:
+        bare = str(getattr(step, "__name__", step))
+        raise BadClaim(bare, "strong", None, "write @scheme(strong=..., weak=...) above the step")
+
     def decorate(step: Step) -> Scheme:
-        key = name or step.__name__.replace("_", "-")
+        key = name or getattr(step, "__name__", type(step).__name__).replace("_", "-")
         orders = {"strong": strong, "weak": weak, "strong_additive": strong_additive}
+        _check_signature(key, step)
         for claim, order in orders.items():
             _check_order(key, claim, order)
         if strong is None and weak is None and strong_additive is None:
@@ -116,6 +124,19 @@ def scheme(
         )
 
     return decorate
+
+
+def _check_signature(key: str, step: Callable[..., object]) -> None:
+    if not callable(step):
+        raise BadStep(key, f"is a {type(step).__name__}, not a function")
+    try:
+        signature = inspect.signature(step)
+    except ValueError:  # a function without one, such as a built-in
+        return
+    try:
+        signature.bind("sde", "t", "x", "h", "noise")
+    except TypeError:
+        raise BadStep(key, f"takes {signature}") from None
 
 
 def _check_order(key: str, claim: str, order: object) -> None:

@@ -5,7 +5,11 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from itertools import pairwise
 
+import numpy as np
+
 from sdebench.errors import BadOption
+
+MOST_STEPS = 2**20  # beyond, one block of paths alone takes minutes
 
 
 @dataclass(frozen=True)
@@ -17,10 +21,14 @@ class Ladder:
     @classmethod
     def of(cls, steps: Iterable[int]) -> "Ladder":
         """Return a checked ladder; raises `BadOption` unless it has three nested rungs or more."""
-        rungs = tuple(steps)
+        if isinstance(steps, str) or not isinstance(steps, Iterable):
+            raise BadOption("steps", repr(steps), "they are numbers, such as (8, 16, 32, 64)")
+        rungs = tuple(int(n) if isinstance(n, np.integer) else n for n in steps)
         shown = ",".join(map(str, rungs)) or "nothing"
         if any(isinstance(n, bool) or not isinstance(n, int) or n < 1 for n in rungs):
             raise BadOption("steps", shown, "a number of steps is a whole number of at least 1")
+        if rungs and max(rungs) > MOST_STEPS:
+            raise BadOption("steps", shown, f"a path has at most {MOST_STEPS} steps")
         if len(rungs) < 3:
             raise BadOption(
                 "steps", shown, "an order needs three rungs or more, such as 8,16,32,64"

@@ -13,6 +13,8 @@ import numpy as np
 
 from sdebench.sde import Array
 
+ROUND_OFF = 8 * float(np.finfo(float).eps)  # of a scatter, relative, for each control subtracted
+
 
 @dataclass(frozen=True)
 class Estimate:
@@ -72,7 +74,10 @@ class Moments:
         cross = self.scatter[np.ix_(c, y)] / scale[:, None]
         slopes = inverse @ cross
         offset = self.mean[c] / scale
-        residual = self.scatter[np.ix_(y, y)] - cross.T @ slopes
+        scatter_yy = self.scatter[np.ix_(y, y)]
+        residual = scatter_yy - cross.T @ slopes
+        # What the regression explains to round-off leaves round-off: never less than this.
+        residual += np.diag(ROUND_OFF * (1 + len(c)) * np.diag(scatter_yy))
         dof = self.count - 1 - len(c)
         leverage = 1 / self.count + float(offset @ inverse @ offset)
         return Estimate(self.mean[y] - slopes.T @ offset, residual / dof * leverage, dof)

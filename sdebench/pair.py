@@ -6,6 +6,10 @@ from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cached_property
 
+import numpy as np
+
+from sdebench import probe
+from sdebench.admission import check_functional, check_problem
 from sdebench.assess import Assessment, Levels, Row, assess, check_references
 from sdebench.contract import Breach, first_breach
 from sdebench.integrator import Claim
@@ -79,6 +83,9 @@ class Pair:
     def examine(self, tolerance: float) -> None:
         """Check the contract and, if it holds, take one-step evidence."""
         scheme, problem = self.plan.scheme, self.plan.problem
+        check_problem(problem)
+        for functional in self.plan.functionals:
+            check_functional(functional, probe.states(problem))
         begin = time.perf_counter()
         breach = first_breach(scheme, problem)
         checked = time.perf_counter()
@@ -95,12 +102,12 @@ class Pair:
 
     def look(self, levels: Levels, threads: int, on_block: Callable[[], None]) -> None:
         """Double the sample (or draw the first one) and assess every row anew."""
-        n_blocks = self.next_blocks
-        self.sample.extend(n_blocks, threads, on_block)
-        self.looks += 1
-        self.assessments = [
-            assess(self.sample, row, levels, self.looks, self.scale) for row in self.rows
-        ]
+        with np.errstate(all="ignore"):  # overflow is ruled on, not warned of
+            self.sample.extend(self.next_blocks, threads, on_block)
+            self.looks += 1
+            self.assessments = [
+                assess(self.sample, row, levels, self.looks, self.scale) for row in self.rows
+            ]
 
     @property
     def next_blocks(self) -> int:

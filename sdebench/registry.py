@@ -18,11 +18,15 @@ Entry = TypeVar("Entry", bound=Named)
 
 
 class Registry(Mapping[str, Entry], Generic[Entry]):
-    """A growing mapping from names to things of one `kind`, each with the place it came from."""
+    """A growing mapping from names to things of one `kind`, each with the place it came from.
+
+    `listing` is the command that lists them; `faults` tells what was offered and could not be had.
+    """
 
     def __init__(self, kind: str, listing: str) -> None:
         self.kind = kind
         self.listing = listing
+        self.faults: list[str] = []
         self._entries: dict[str, Entry] = {}
         self._places: dict[str, str] = {}
 
@@ -40,6 +44,10 @@ class Registry(Mapping[str, Entry], Generic[Entry]):
         except KeyError:
             hint = f" `{self.listing}` lists all {len(self._entries)}."
             raise UnknownName(self.kind, name, self._entries, hint) from None
+
+    def get(self, name: str, default: object = None) -> Entry | None:  # type: ignore[override]
+        """Return the entry of a name, or None."""
+        return self._entries.get(name)
 
     def __contains__(self, name: object) -> bool:
         return name in self._entries

@@ -1,12 +1,10 @@
 """From pairs to the rows and claims of the evidence file."""
 
-import math
-
 import numpy as np
 
 from sdebench.assess import Assessment, Levels
 from sdebench.detection import Sensitivity, limits, plateau
-from sdebench.evidence import ClaimResult, Cost, DetectionLimit, Result, Rung
+from sdebench.evidence import ClaimResult, Cost, DetectionLimit, Result, Rung, finite
 from sdebench.integrator import Claim
 from sdebench.onestep import OneStep
 from sdebench.orders import local_order, student_quantile
@@ -54,7 +52,9 @@ def _claim(
     pair: Pair, claim: Claim | None, ruling: Ruling, decisive: Assessment | None
 ) -> ClaimResult:
     order, low, high = _bounds(decisive)
+    index = decisive.row.functional if decisive is not None else None
     return ClaimResult(
+        functional=None if index is None else pair.plan.functionals[index].name,
         scheme=pair.plan.scheme.label,
         problem=pair.plan.problem.label,
         kind=claim.kind if claim is not None else "contract",
@@ -73,11 +73,6 @@ def _bounds(a: Assessment | None) -> tuple[float | None, float | None, float | N
         return None, None, None
     local = a.order.local
     return local.estimate, finite(local.low), finite(local.high)
-
-
-def finite(value: float) -> float | None:
-    """Return a number as JSON can hold it: None for what is not finite."""
-    return float(value) if math.isfinite(value) else None
 
 
 def _why_not(pair: Pair) -> str:

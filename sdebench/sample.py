@@ -120,7 +120,7 @@ class Sample:
         if not hasattr(self._local, "walk"):
             self._local.walk = Walk(self.plan)
         walk: Walk = self._local.walk
-        with np.errstate(all="ignore"), blamed(self.plan.scheme, "while sampling"):
+        with np.errstate(all="ignore"):
             return walk.block(index)
 
 
@@ -149,7 +149,10 @@ class Walk:
         ]
         self.streams = [np.random.Generator(np.random.SFC64(seed)) for seed in seeds]
         self.rungs = [RungState(plan, n) for n in plan.ladder.steps]
-        return self._tally(self._join(0))
+        scheme = plan.scheme
+        with blamed(f"Scheme '{scheme.label}'", scheme.step, "while sampling"):
+            whole = self._join(0)
+        return self._tally(whole)
 
     def _join(self, rung: int) -> Stack:
         """Walk as many steps of `rung` as make one of the rung before, and return that one."""
@@ -177,7 +180,7 @@ class Walk:
         quadratic = [rung.quadratic for rung in self.rungs]
         values = self.values
         rows.fill_errors(values, states, worst, end)
-        rows.fill_weak(values, states, end, [f.function for f in plan.functionals])
+        rows.fill_weak(values, states, end, [_guarded(f) for f in plan.functionals])
         rows.fill_controls(values, whole["dw"], quadratic, problem.horizon, plan.ladder.steps)
         batches = values.reshape(rows.count, BLOCK // BATCH, BATCH).sum(axis=2) / BATCH
         measured = values[: rows.n_measured]
@@ -187,6 +190,16 @@ class Walk:
             np.einsum("ij,ij->i", measured, measured),
             np.array([BLOCK - np.isfinite(x).sum() for x in states]),
         )
+
+
+def _guarded(functional: Functional) -> Callable[[Array], Array]:
+    """Return a functional's function whose exceptions are told as its own."""
+
+    def values(x: Array) -> Array:
+        with blamed(f"Functional '{functional.name}'", functional.function, "while sampling"):
+            return functional.function(x)
+
+    return values
 
 
 class RungState:

@@ -1,6 +1,6 @@
 """The study: schemes on problems, looked at until every claim is decided or a limit is reached."""
 
-import os
+import inspect
 import platform
 import shlex
 import time
@@ -8,40 +8,34 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from importlib.metadata import version
-from typing import TypeVar
 
 import numpy as np
 
-from sdebench import ladder
+from sdebench import discovery, ladder
 from sdebench.assess import Levels
 from sdebench.detection import sensitivities
-from sdebench.discovery import (
-    find_functional,
-    find_problem,
-    find_scheme,
-    problems,
-    schemes,
-)
-from sdebench.errors import BadOption
 from sdebench.evidence import Evidence, Provenance
-from sdebench.functional import STANDARD, Functional
+from sdebench.functional import STANDARD
 from sdebench.integrator import Scheme
 from sdebench.ladder import Ladder
 from sdebench.pair import Pair
-from sdebench.problem import Problem
+from sdebench.request import (
+    FunctionalLike,
+    ProblemLike,
+    SchemeLike,
+    check_numbers,
+    chosen_functionals,
+    chosen_pairs,
+    processors,
+)
 from sdebench.results import claim_results, results
 from sdebench.sample import Plan
-from sdebench.sde import Array
 from sdebench.verdict import overall
 
 MAX_LOOKS = 7  # two million paths on the last look
 DEFAULT_SEED = 1
 
 Progress = Callable[[str, int, int], None]
-SchemeLike = str | Scheme
-ProblemLike = str | Problem
-Single = TypeVar("Single", Scheme, Problem)
-FunctionalLike = str | Functional | Callable[[Array], Array]
 
 
 @dataclass(frozen=True)
@@ -73,7 +67,7 @@ def measure(
     on: ProblemLike | Iterable[ProblemLike] | None = None,
     *,
     steps: Iterable[int] | None = None,
-    functionals: Iterable[FunctionalLike] | None = None,
+    functionals: FunctionalLike | Iterable[FunctionalLike] | None = None,
     grid_maximum: bool = False,
     seed: int = DEFAULT_SEED,
     confidence: float = 0.95,
@@ -104,13 +98,13 @@ def measure(
     ('strong', 'supported')
     """
     begin = time.monotonic()
-    _check(confidence, tolerance, seed, budget, looks, threads)
-    n_threads = threads or _processors()
+    check_numbers(confidence, tolerance, seed, budget, looks, threads)
+    n_threads = threads or processors()
     rungs = ladder.DEFAULT if steps is None else Ladder.of(steps)
-    chosen = _functionals(functionals or ())
+    chosen = chosen_functionals(functionals)
     plans = [
         Plan(scheme, problem, rungs, chosen, seed, grid_maximum)
-        for scheme, problem in _chosen(schemes, on)
+        for scheme, problem in chosen_pairs(schemes, on)
     ]
     pairs = [Pair(plan) for plan in plans]
     levels = Levels(confidence, tolerance, sum(len(p.rows) for p in pairs if p.applies))
@@ -119,18 +113,20 @@ def measure(
     sampled = [pair for pair in pairs if pair.sampled]
     for pair in sampled:
         pair.check(len(sampled) * len(chosen))
-    rounds = max((pair.looks for pair in pairs), default=0)
     claims = [claim for pair in pairs for claim in claim_results(pair, levels)]
     found = {p.plan.problem.label: sensitivities(p.plan.problem, chosen) for p in sampled}
+    rows = [
+        row
+        for pair in pairs
+        for row in results(pair, levels, n_threads, found.get(pair.plan.problem.label))
+    ]
+    rounds = max((pair.looks for pair in pairs), default=0)
     return Evidence(
         verdict=overall([claim.verdict for claim in claims]),
         provenance=Provenance(
-            sdebench=version("sdebench"),
-            numpy=np.__version__,
-            python=platform.python_version(),
-            platform=platform.platform(),
+            **_versions(),
             created=datetime.now(UTC).isoformat(timespec="seconds"),
-            command=_command(plans, schemes, on, levels, effort, rounds),
+            command=_command(plans, schemes is None, on is None, levels, effort, rounds),
             seed=seed,
             confidence=confidence,
             tolerance=tolerance,
@@ -141,12 +137,17 @@ def measure(
             seconds=time.monotonic() - begin,
         ),
         claims=claims,
-        results=[
-            row
-            for pair in pairs
-            for row in results(pair, levels, n_threads, found.get(pair.plan.problem.label))
-        ],
+        results=rows,
     )
+
+
+def _versions() -> dict[str, str]:
+    return {
+        "sdebench": version("sdebench"),
+        "numpy": np.__version__,
+        "python": platform.python_version(),
+        "platform": platform.platform(),
+    }
 
 
 def _run(
@@ -185,82 +186,23 @@ class Count:
         self.progress(self.what, self.done, self.total)
 
 
-def _processors() -> int:
-    if hasattr(os, "sched_getaffinity"):
-        return len(os.sched_getaffinity(0))
-    return os.cpu_count() or 1
-
-
 def _silent(what: str, done: int, total: int) -> None:
     pass
 
 
-def _chosen(
-    given: SchemeLike | Iterable[SchemeLike] | None,
-    on: ProblemLike | Iterable[ProblemLike] | None,
-) -> list[tuple[Scheme, Problem]]:
-    """Return the pairs to measure; without a problem named, those that the scheme applies to."""
-    chosen = [find_scheme(s) for s in _several(given)] or list(schemes().values())
-    named = [find_problem(p) for p in _several(on)]
-    return [
-        (scheme, problem)
-        for scheme in chosen
-        for problem in named or list(problems().values())
-        if named or set(scheme.noise) <= set(problem.functionals)
-    ]
-
-
-def _several(given: str | Single | Iterable[str | Single] | None) -> list[str | Single]:
-    if given is None:
-        return []
-    if isinstance(given, Iterable) and not isinstance(given, str):
-        return list(given)
-    return [given]
-
-
-def _functionals(given: Iterable[FunctionalLike]) -> tuple[Functional, ...]:
-    chosen = {f.name: f for f in STANDARD}
-    for each in given:
-        functional = find_functional(each)
-        chosen[functional.name] = functional
-    return tuple(chosen.values())
-
-
-def _check(
-    confidence: float,
-    tolerance: float,
-    seed: int,
-    budget: float | None,
-    looks: int | None,
-    threads: int | None,
-) -> None:
-    """Check the plain numbers of a study; each rule is one sentence."""
-    rules: list[tuple[str, object, bool, str]] = [
-        ("confidence", confidence, 0.5 <= confidence < 1, "it lies between 0.5 and 1, as 0.95"),
-        ("tolerance", tolerance, 0 < tolerance <= 0.25, "it lies between 0 and 0.25 orders"),
-        ("seed", seed, isinstance(seed, int) and seed >= 0, "it is a whole number, 0 or more"),
-        ("budget", budget, budget is None or budget > 0, "it is a number of seconds above 0"),
-        ("looks", looks, looks is None or looks >= 1, "it is a whole number, 1 or more"),
-        ("threads", threads, threads is None or threads >= 1, "it is a whole number, 1 or more"),
-        ("looks", looks, looks is None or budget is None, "give --looks or --budget, not both"),
-    ]
-    for option, value, holds, rule in rules:
-        if not holds:
-            raise BadOption(option, value, rule)
-
-
 def _command(
     plans: Sequence[Plan],
-    given: object,
-    on: object,
+    every_scheme: bool,
+    every_problem: bool,
     levels: Levels,
     effort: Effort,
     rounds: int,
 ) -> str:
     """Return the command that repeats a run to the bit: a budget is replaced by its rounds."""
     words = ["sdebench", "measure"]
-    words += dict.fromkeys(plan.scheme.label for plan in plans) if given is not None else []
-    if on is not None:
+    if not every_scheme:
+        words += dict.fromkeys(_typed(plan.scheme) for plan in plans)
+    if not every_problem:
         for label in dict.fromkeys(plan.problem.label for plan in plans):
             words += ["--on", label]
     plan = plans[0] if plans else None
@@ -275,3 +217,13 @@ def _command(
     if effort.looks is not None or effort.budget is not None:
         words += ["--looks", str(rounds)]
     return shlex.join(words)
+
+
+def _typed(scheme: Scheme) -> str:
+    """Return what to type for a scheme; one that was passed as an object is named by its file."""
+    if scheme.typed is not None or discovery.schemes().get(scheme.name) is scheme:
+        return scheme.label
+    try:
+        return f"{inspect.getfile(scheme.step)}:{scheme.step.__name__}"
+    except (TypeError, AttributeError):
+        return scheme.label

@@ -3,10 +3,11 @@
 A claim is a lower bound p on the order, judged with a tolerance δ. With q the local order at the
 finest counting pair of rungs and q_before the one above it:
 
-    supported  when the lower ends of q and of q - 2.4 max(0, q_before - q) exceed p - δ
-    refuted    when at least four rungs count, the finest of 32 steps or more, the upper ends of q
-               and of 2 q - q_before are below p - δ, and the order falls or has moved by less
-               than δ/2 (an order that still rises belongs to a ladder that is too coarse)
+    supported  when the lower ends of q and of q - 2.4 max(0, q_before - q) exceed p - δ, unless q
+               has jumped up by half an order or more (as before a change of sign)
+    refuted    when at least four rungs count, the finest of 32 steps or more, and the upper ends
+               of q and of q + 4 max(0, q - q_before) are below p - δ (an order that still rises
+               towards it belongs to a ladder that is too coarse)
     undecided  otherwise
 """
 
@@ -17,6 +18,7 @@ from enum import Enum
 
 from sdebench.orders import Errors, Interval, Order
 
+JUMP = 0.5
 MIN_REFUTING_RUNGS = 4
 MIN_REFUTING_STEPS = 32
 
@@ -66,26 +68,43 @@ class Ruling:
 
 
 def judge(
-    errors: Errors, order: Order | None, counting: Sequence[int], claimed: float, tolerance: float
+    errors: Errors,
+    order: Order | None,
+    counting: Sequence[int],
+    claimed: float,
+    tolerance: float,
+    look: int,
+    unresolved: bool,
 ) -> Ruling:
-    """Return the ruling on a claim of order `claimed` from trusted errors and their order."""
+    """Return the ruling on a claim of order `claimed` from trusted errors and their order.
+
+    `look` is the number of looks so far, each of which doubled the paths; `unresolved` says
+    whether a rung's error is still not told from zero.
+    """
     needed = claimed - tolerance
     if order is None:
-        return _too_few(errors, counting)
-    if order.curbed is None or order.extrapolated is None or order.moved is None:
-        return _too_few(errors, order.counting)
+        return _too_few(errors, counting, unresolved)
+    if order.curbed is None or order.lifted is None or order.moved is None:
+        return _too_few(errors, counting, unresolved)
+    if order.curbed.low > needed and order.moved.low > JUMP:
+        return Ruling(
+            Verdict.UNDECIDED,
+            f"{seen(errors, order)}, a jump by {order.moved.estimate:.2g} from the pair before: no "
+            f"order has settled yet; try --steps {finer(errors.steps)}.",
+        )
     if order.curbed.low > needed:
         return Ruling(Verdict.SUPPORTED, f"{seen(errors, order)}, claimed {claimed:g}.")
-    below = order.local.high < needed and order.extrapolated.high < needed
-    settled = order.moved.high < tolerance / 2
-    finest = errors.steps[order.counting[-1]]
-    enough = len(order.counting) >= MIN_REFUTING_RUNGS and finest >= MIN_REFUTING_STEPS
-    if below and settled and enough:
-        sentence = f"{seen(errors, order)}, where {claimed:g} is claimed (tolerance {tolerance:g})."
-        return Ruling(Verdict.REFUTED, sentence)
-    if below and settled:
-        return _too_few(errors, order.counting)
-    return _unsettled(errors, order, order.curbed, order.moved, needed, tolerance)
+    if order.lifted.high >= needed:
+        return _unsettled(errors, order, needed, look)
+    finest = errors.steps[counting[-1]]
+    if len(counting) < MIN_REFUTING_RUNGS or finest < MIN_REFUTING_STEPS:
+        return Ruling(
+            Verdict.UNDECIDED,
+            f"{seen(errors, order)}, where {claimed:g} is claimed, but {len(counting)} rungs to "
+            f"{finest} steps are too few to refute it: try --steps {finer(errors.steps)}.",
+        )
+    sentence = f"{seen(errors, order)}, where {claimed:g} is claimed (tolerance {tolerance:g})."
+    return Ruling(Verdict.REFUTED, sentence)
 
 
 def seen(errors: Errors, order: Order) -> str:
@@ -95,7 +114,7 @@ def seen(errors: Errors, order: Order) -> str:
 
 
 def shown(interval: Interval) -> str:
-    """Return an interval as '0.998 (0.990 to 1.006)', cut where the uncertainty begins."""
+    """Return an interval as '0.9980 (0.9897 to 1.0063)', to a tenth of its half-width."""
     width = min(interval.high - interval.estimate, interval.estimate - interval.low)
     digits = 3 if not 0 < width < math.inf else min(max(1 - math.floor(math.log10(width)), 1), 4)
     high = f"to {interval.high:.{digits}f}" if interval.high < math.inf else "upward"
@@ -103,53 +122,49 @@ def shown(interval: Interval) -> str:
     return f"{interval.estimate:.{digits}f} ({low} {high})"
 
 
-def _unsettled(
-    errors: Errors,
-    order: Order,
-    curbed: Interval,
-    moved: Interval,
-    needed: float,
-    tolerance: float,
-) -> Ruling:
+def _unsettled(errors: Errors, order: Order, needed: float, look: int) -> Ruling:
     """The order is neither clearly high enough nor clearly too low: noise, or too coarse rungs."""
-    finer_rungs = f"the rungs are too coarse to tell; try --steps {finer(errors.steps)}."
-    if order.local.low > needed and curbed.estimate <= needed:
+    assert order.curbed is not None
+    assert order.lifted is not None
+    assert order.moved is not None
+    moved = order.moved.estimate
+    if order.local.low > needed and order.curbed.estimate <= needed:
+        trend, open_ended = f"falling by {-moved:.2g}", order.curbed.high > needed
+    elif order.local.high < needed and order.lifted.estimate >= needed:
+        trend, open_ended = f"rising by {moved:.2g}", order.lifted.low < needed
+    else:
         return Ruling(
             Verdict.UNDECIDED,
-            f"{seen(errors, order)}, but falling by {-moved.estimate:.2g} from the pair before: "
-            f"{finer_rungs}",
-            more_paths_help=curbed.high > needed,
-        )
-    if order.local.high < needed and moved.low > tolerance / 2:
-        return Ruling(
-            Verdict.UNDECIDED,
-            f"{seen(errors, order)}, but rising by {moved.estimate:.2g} from the pair before: "
-            f"{finer_rungs}",
+            f"{seen(errors, order)}; as it falls or rises it may lead from "
+            f"{order.curbed.low:.2f} to {order.lifted.high:.2f}, too wide to tell from {needed:g}; "
+            f"{_more_paths(order.curbed, needed, look)}.",
+            more_paths_help=True,
         )
     return Ruling(
         Verdict.UNDECIDED,
-        f"{seen(errors, order)}: too wide to tell it from {needed:g}; "
-        f"{_more_paths(curbed, needed)}.",
-        more_paths_help=True,
+        f"{seen(errors, order)}, but {trend} from the pair before: the rungs are too coarse to "
+        f"tell; try --steps {finer(errors.steps)}.",
+        more_paths_help=open_ended,
     )
 
 
-def _more_paths(curbed: Interval, needed: float) -> str:
-    """Say how many times the paths would tell, since a width shrinks with their square root."""
+def _more_paths(curbed: Interval, needed: float, look: int) -> str:
+    """Say how many looks would tell, since a width shrinks with the square root of the paths."""
     gap, reach = curbed.estimate - needed, curbed.estimate - curbed.low
     if not 0 < gap < reach < math.inf:
-        return "more paths would (each look doubles them: --looks)"
-    times = 2 ** math.ceil(2 * math.log2(reach / gap))
-    return f"some {times} times the paths would (each look doubles them: --looks)"
+        return f"more paths might, as with --looks {look + 2} (each look doubles them)"
+    looks = look + math.ceil(2 * math.log2(reach / gap))
+    return f"more paths would, some --looks {looks} (each look doubles them)"
 
 
-def _too_few(errors: Errors, counting: Sequence[int]) -> Ruling:
+def _too_few(errors: Errors, counting: Sequence[int], unresolved: bool) -> Ruling:
     n = len(counting)
     return Ruling(
         Verdict.UNDECIDED,
-        f"Only {n} of {len(errors.steps)} rungs count (an error that changes sign or sinks into "
-        f"noise or round-off does not): try --steps {finer(errors.steps)}.",
-        more_paths_help=n < len(errors.steps),
+        f"Only {n} of {len(errors.steps)} rungs count (not those whose error is as large as the "
+        "solution, is yet to change sign, or has sunk into round-off): try "
+        f"--steps {finer(errors.steps)}.",
+        more_paths_help=unresolved,
     )
 
 

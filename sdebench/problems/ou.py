@@ -8,7 +8,8 @@ Uhlenbeck & Ornstein (1930), Phys. Rev. 36, 823; exact update: Gillespie (1996),
 
 Defaults: every parameter differs from 0, from 1 and from the others, and x0 from the mean, so
 that no factor can be lost unseen; the moment errors of the Euler–Maruyama scheme keep their sign
-on all rungs from 4 steps (with θ=2, σ=0.5 the second-moment error changes it near 16 steps).
+on all rungs from 4 steps (with θ=2, σ=0.5, mean=0, x0=1 the second-moment error changes it near
+16 steps).
 """
 
 import math

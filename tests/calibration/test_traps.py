@@ -22,8 +22,8 @@ from sdebench.verdict import Verdict
 
 pytestmark = pytest.mark.calibration
 
-N_SEEDS = 40
-LOOKS = 4  # a quarter of a million paths
+N_SEEDS = 24
+LOOKS = 3  # some hundred thousand paths
 TRAPS = (
     "ou:theta=2,sigma=0.5,mean=0,x0=1",
     "gbm:mu=0.3,sigma=0.4,x0=1",
