@@ -1,0 +1,146 @@
+"""The README, run: every command and every example in it does what it says."""
+
+import json
+import os
+import re
+import shlex
+import subprocess
+import sys
+import tomllib
+from pathlib import Path
+
+import pytest
+
+from sdebench import Verdict
+from sdebench.cli import cli
+
+ROOT = Path(__file__).parents[2]
+README = (ROOT / "README.md").read_text()
+BLOCK = re.compile(r"<!-- (file|run): (\S+) -->\n```(\w+)\n(.*?)```\n", re.DOTALL)
+BLOCKS = {(kind, name): content for kind, name, _, content in BLOCK.findall(README)}
+
+
+def parts(name: str) -> list[str]:
+    """Return the commands of a one-line block, in order."""
+    (line,) = BLOCKS["run", name].splitlines()
+    return line.split(" && ")
+
+
+@pytest.fixture
+def desk(tmp_path):
+    """Return a folder with the files that the README puts there, and an environment to run in."""
+    for (kind, name), content in BLOCKS.items():
+        if kind == "file":
+            (tmp_path / name).write_text(content)
+    scripts = Path(sys.executable).parent
+    if not (scripts / "sdebench").exists():
+        pytest.skip("the project's scripts are not installed beside this interpreter")
+    dropped = {k: v for k, v in os.environ.items() if k not in ("FORCE_COLOR", "COLUMNS")}
+    return tmp_path, dropped | {"PATH": f"{scripts}{os.pathsep}{os.environ['PATH']}"}
+
+
+def test_every_fenced_block_is_marked_for_a_test():
+    assert len(BLOCKS) == README.count("\n```") // 2
+
+
+def test_the_blocks_are_those_that_are_tested_here():
+    assert set(BLOCKS) == {
+        ("run", "measure"),
+        ("run", "test"),
+        ("file", "desk.py"),
+        ("run", "example"),
+        ("run", "python"),
+    }
+
+
+def test_the_example_is_supported_on_every_problem(desk):
+    folder, environment = desk
+    done = subprocess.run(
+        ["sh", "-ec", BLOCKS["run", "example"]],
+        cwd=folder,
+        env=environment,
+        capture_output=True,
+        text=True,
+    )
+    assert (done.returncode, done.stderr) == (0, "")
+    assert "Verdict: supported (6 supported)" in done.stdout
+
+
+def test_the_python_example_runs_and_saves_its_evidence(desk):
+    folder, environment = desk
+    done = subprocess.run(
+        [sys.executable, "-c", BLOCKS["run", "python"]],
+        cwd=folder,
+        env=environment,
+        capture_output=True,
+        text=True,
+    )
+    assert (done.returncode, done.stderr) == (0, "")
+    assert done.stdout.startswith("supported 0.99")
+    assert json.loads((folder / "evidence.json").read_text())["verdict"] == "supported"
+
+
+def test_the_command_that_measures_ends_in_a_valid_one():
+    *setup, last = parts("measure")
+    program, *words = shlex.split(last)
+    assert program == "sdebench"
+    assert cli.commands[words[0]].make_context(words[0], words[1:])
+    assert setup[-1] == "python -m pip install -e ."
+
+
+def test_the_command_that_tests_installs_an_extra_that_there_is():
+    project = tomllib.loads((ROOT / "pyproject.toml").read_text())["project"]
+    install, pytest_ = parts("test")[-2:]
+    (extra,) = re.findall(r"-e '\.\[(\w+)\]'", install)
+    assert extra in project["optional-dependencies"]
+    assert pytest_ == "python -m pytest"
+
+
+def test_both_commands_set_up_the_same_way():
+    assert parts("measure")[:2] == parts("test")[:2]
+
+
+def test_ci_runs_the_very_command_that_the_readme_tells():
+    (extract,) = re.findall(r"^command=\$\((.*)\)$", (ROOT / ".ci/run").read_text(), re.MULTILINE)
+    done = subprocess.run(["bash", "-c", extract], cwd=ROOT, capture_output=True, text=True)
+    assert done.stdout == BLOCKS["run", "test"]
+
+
+def test_ci_can_be_run_as_it_is_told():
+    assert os.access(ROOT / ".ci/run", os.X_OK)
+
+
+@pytest.mark.parametrize("verdict", Verdict, ids=lambda v: v.value)
+def test_the_table_of_verdicts_gives_the_exit_code_of_each(verdict):
+    (code,) = re.findall(rf"^\| {verdict.value} \|.*\| (\d) \|$", README, re.MULTILINE)
+    assert int(code) == verdict.exit_code
+
+
+@pytest.mark.parametrize("document", ["README.md", "DEVELOPERS.md"])
+def test_every_option_named_in_prose_exists(document):
+    prose = re.sub(r"```.*?```", "", (ROOT / document).read_text(), flags=re.DOTALL)
+    named = set(re.findall(r"`(?:sdebench measure )?(--[a-z-]+)", prose))
+    known = {opt for c in cli.commands.values() for p in c.params for opt in p.opts} | {"--help"}
+    assert named <= known
+
+
+def test_every_command_named_exists():
+    named = set(re.findall(r"`?sdebench ([a-z]+)", "\n".join(re.findall(r"`[^`\n]+`", README))))
+    assert named
+    assert named <= set(cli.commands)
+
+
+def test_the_sentence_on_a_missing_half_is_what_the_bench_says(desk):
+    folder, environment = desk
+    wrong = BLOCKS["file", "desk.py"].replace("0.5 * ", "").replace("desk_step", "step")
+    (folder / "my.py").write_text(wrong)
+    done = subprocess.run(
+        ["sdebench", "measure", "my.py:step", "--on", "gbm", "--looks", "1", "--threads", "1"],
+        cwd=folder,
+        env=environment,
+        capture_output=True,
+        text=True,
+    )
+    (quoted,) = re.findall(r"\n\n((?:    .*\n)+)\n", README)
+    assert done.returncode == 1
+    assert " ".join(quoted.split()) in " ".join(done.stdout.split())
