@@ -1,0 +1,36 @@
+"""What sampling alone decides, it decides on every seed: 20 of them, five in the fast set.
+
+The faults are many times what 32768 paths resolve: the bounds on each order stay below its claim
+by four times their width or more. Some 30 paths of a rung end in the rarest NaN, and none with a
+probability of 1e-13. A sound claim is refuted with a probability of at most 1 - C = 0.05 a run by
+the bench's own policy, and far less where the order is clear of its claim, as it is here.
+"""
+
+import pytest
+
+import sdebench as sb
+from tests.mutants import hidden
+from tests.mutants.catalogue import SAMPLED, Mutant, measured, refutations
+
+SEEDS = [
+    pytest.param(range(1, 6), id="seeds-1-to-5"),
+    pytest.param(range(6, 21), id="seeds-6-to-20", marks=pytest.mark.calibration),
+]
+
+
+@pytest.mark.parametrize("seeds", SEEDS)
+@pytest.mark.parametrize("mutant", hidden.family.mutants, ids=lambda mutant: mutant.label)
+def test_a_fault_that_only_whole_paths_meet_is_refuted_on_every_seed(mutant: Mutant, seeds: range):
+    for seed in seeds:
+        evidence = measured(mutant.scheme, mutant.on, seed=seed)
+        assert evidence.verdict is sb.Verdict.REFUTED
+        assert set(mutant.says) <= set(refutations(evidence)[SAMPLED])
+
+
+@pytest.mark.parametrize("seeds", SEEDS)
+def test_a_registered_scheme_is_supported_on_every_seed(scheme, problem, pair_applies, seeds):
+    if not pair_applies(scheme, problem):
+        pytest.skip(f"{problem.name} lacks what {scheme.name} steps by")
+    for seed in seeds:
+        evidence = measured(scheme, problem, seed=seed, looks=None)
+        assert evidence.verdict is sb.Verdict.SUPPORTED
