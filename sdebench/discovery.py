@@ -15,10 +15,9 @@ import sys
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 from functools import lru_cache
-from importlib.metadata import EntryPoint, entry_points
 from pathlib import Path
 from types import ModuleType
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 from sdebench.blame import users_frames
 from sdebench.errors import SdebenchError, UnknownName, UserCodeRaised, UserFileError
@@ -28,6 +27,9 @@ from sdebench.problem import Problem
 from sdebench.registry import Registry
 from sdebench.sde import Array
 
+if TYPE_CHECKING:
+    from importlib.metadata import EntryPoint
+
 SCHEMES = "sdebench.schemes"
 PROBLEMS = "sdebench.problems"
 Kind = TypeVar("Kind", Scheme, Problem)
@@ -36,6 +38,8 @@ Kind = TypeVar("Kind", Scheme, Problem)
 @lru_cache(maxsize=1)
 def schemes() -> Registry[Scheme]:
     """Return every registered scheme: those of the bench, then those of installed packages."""
+    from importlib.metadata import entry_points  # heavy, and not needed to define a scheme
+
     registry: Registry[Scheme] = Registry("scheme", "sdebench catalogue")
     for module in _modules(SCHEMES):
         for scheme in collect(module, Scheme):
@@ -49,7 +53,7 @@ def schemes() -> Registry[Scheme]:
     return registry
 
 
-def _offered(point: EntryPoint) -> list[Scheme]:
+def _offered(point: "EntryPoint") -> list[Scheme]:
     """Return what an installed package offers: one scheme, or all of a module."""
     place = f"The entry point '{point.name}' ({point.value})"
     try:

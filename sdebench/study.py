@@ -7,7 +7,6 @@ import time
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
-from importlib.metadata import version
 
 import numpy as np
 
@@ -142,6 +141,8 @@ def measure(
 
 
 def _versions() -> dict[str, str]:
+    from importlib.metadata import version  # heavy, and needed at the end of a study only
+
     return {
         "sdebench": version("sdebench"),
         "numpy": np.__version__,
