@@ -8,6 +8,7 @@ from typing import Literal
 import numpy as np
 
 from sdebench.errors import BadFunctional, BenchFault
+from sdebench.evidence import finite
 from sdebench.integrator import Claim
 from sdebench.orders import Errors, Order, counting_rungs, observed_order, student_quantile
 from sdebench.sample import Sample, Tally
@@ -69,6 +70,14 @@ class Assessment:
     trusted: bool
     shares: Array
     ruling: Ruling
+
+    @property
+    def bounds(self) -> tuple[float | None, float | None, float | None]:
+        """The local order at the finest counting pair, its lower and its upper bound."""
+        if self.order is None:
+            return None, None, None
+        local = self.order.local
+        return local.estimate, finite(local.low), finite(local.high)
 
 
 def assess(sample: Sample, row: Row, levels: Levels, look: int, scale: float) -> Assessment:

@@ -50,6 +50,13 @@ class Pair:
         """Whether the problem has every functional that the scheme needs."""
         return set(self.plan.scheme.noise) <= set(self.plan.problem.functionals)
 
+    @property
+    def why_not(self) -> str:
+        """The sentence that says why the scheme does not apply."""
+        scheme, problem = self.plan.scheme, self.plan.problem
+        missing = next(name for name in scheme.noise if name not in problem.functionals)
+        return f"{problem.label} has no functional '{missing}', which {scheme.label} steps by."
+
     @cached_property
     def claims(self) -> list[Claim]:
         """The claims on this problem's class of noise."""

@@ -1,10 +1,13 @@
-"""From pairs to the rows and claims of the evidence file."""
+"""From pairs to the rows of the evidence file."""
+
+from dataclasses import replace
+from typing import Any
 
 import numpy as np
 
 from sdebench.assess import Assessment, Levels
 from sdebench.detection import Sensitivity, limits, plateau
-from sdebench.evidence import ClaimResult, Cost, DetectionLimit, Result, Rung, finite
+from sdebench.evidence import Cost, DetectionLimit, Kind, Result, Rung, finite
 from sdebench.integrator import Claim
 from sdebench.onestep import OneStep
 from sdebench.orders import local_order, student_quantile
@@ -29,96 +32,44 @@ def results(
     return rows
 
 
-def claim_results(pair: Pair, levels: Levels) -> list[ClaimResult]:
-    """Return the verdict on each claim of a pair, after that on its contract if it is broken."""
-    if not pair.applies:
-        ruling = Ruling(Verdict.NOT_APPLICABLE, _why_not(pair))
-        return [_claim(pair, claim, ruling, None) for claim in pair.claims]
-    assert pair.local is not None
-    if pair.local.breach is not None:
-        broken = Ruling(Verdict.REFUTED, pair.local.breach.sentence)
-        unmeasured = Ruling(
-            Verdict.REFUTED, "Not measured: the step breaks its contract, so no order is its own."
-        )
-        rest = [_claim(pair, claim, unmeasured, None) for claim in pair.claims]
-        return [_claim(pair, None, broken, None), *rest]
-    return [
-        _claim(pair, claim, pair.claim_ruling(claim, levels), pair.decisive(claim))
-        for claim in pair.claims
-    ]
-
-
-def _claim(
-    pair: Pair, claim: Claim | None, ruling: Ruling, decisive: Assessment | None
-) -> ClaimResult:
-    order, low, high = _bounds(decisive)
-    index = decisive.row.functional if decisive is not None else None
-    return ClaimResult(
-        functional=None if index is None else pair.plan.functionals[index].name,
-        scheme=pair.plan.scheme.label,
-        problem=pair.plan.problem.label,
-        kind=claim.kind if claim is not None else "contract",
-        claimed=claim.order if claim is not None else None,
-        order=order,
-        low=low,
-        high=high,
-        exact=decisive.exact if decisive is not None else False,
-        verdict=ruling.verdict,
-        sentence=ruling.sentence,
-    )
-
-
-def _bounds(a: Assessment | None) -> tuple[float | None, float | None, float | None]:
-    if a is None or a.order is None or (not a.trusted and a.ruling.verdict is Verdict.REFUTED):
-        return None, None, None
-    local = a.order.local
-    return local.estimate, finite(local.low), finite(local.high)
-
-
-def _why_not(pair: Pair) -> str:
-    scheme, problem = pair.plan.scheme, pair.plan.problem
-    missing = [name for name in scheme.noise if name not in problem.functionals]
-    return f"{problem.label} has no functional '{missing[0]}', which {scheme.label} steps by."
-
-
-def _not_applicable(pair: Pair, claim: Claim) -> Result:
+def _row(
+    pair: Pair, kind: Kind, claim: Claim | None, ruling: Ruling, cost: Cost, **measured: Any
+) -> Result:
+    """Return a row on a pair; what is not `measured` is blank."""
+    blank: dict[str, Any] = {
+        "route": None,
+        "functional": None,
+        "order": None,
+        "low": None,
+        "high": None,
+        "exact": False,
+        "rungs": [],
+    }
     return Result(
         scheme=pair.plan.scheme.label,
         problem=pair.plan.problem.label,
-        kind=claim.kind,
-        route=None,
-        functional=None,
-        claimed=claim.order,
-        order=None,
-        low=None,
-        high=None,
-        exact=False,
-        verdict=Verdict.NOT_APPLICABLE,
-        sentence=_why_not(pair),
-        rungs=[],
-        cost=Cost(sample="none", seconds=0.0),
+        kind=kind,
+        claimed=claim.order if claim is not None else None,
+        verdict=ruling.verdict,
+        sentence=ruling.sentence,
+        cost=cost,
+        **(blank | measured),
     )
+
+
+def _not_applicable(pair: Pair, claim: Claim) -> Result:
+    ruling = Ruling(Verdict.NOT_APPLICABLE, pair.why_not)
+    return _row(pair, claim.kind, claim, ruling, Cost(sample="none", seconds=0.0))
 
 
 def _contract(pair: Pair) -> Result:
     assert pair.local is not None
     breach = pair.local.breach
-    return Result(
-        scheme=pair.plan.scheme.label,
-        problem=pair.plan.problem.label,
-        kind="contract",
-        route=None,
-        functional=None,
-        claimed=None,
-        order=None,
-        low=None,
-        high=None,
-        exact=False,
-        verdict=Verdict.SUPPORTED if breach is None else Verdict.REFUTED,
-        sentence="The step keeps every law of its contract." if breach is None else breach.sentence,
-        rungs=[],
-        cost=Cost(sample=f"{pair.label}, contract", seconds=pair.local.contract_seconds),
-    )
+    ruling = Ruling(Verdict.SUPPORTED, "The step keeps every law of its contract.")
+    if breach is not None:
+        ruling = Ruling(Verdict.REFUTED, breach.sentence)
+    cost = Cost(sample=f"{pair.label}, contract", seconds=pair.local.contract_seconds)
+    return _row(pair, "contract", None, ruling, cost)
 
 
 def _one_step(pair: Pair, claim: Claim, levels: Levels) -> Result:
@@ -128,22 +79,19 @@ def _one_step(pair: Pair, claim: Claim, levels: Levels) -> Result:
     ruling = one_step.ruling(claim, levels.tolerance)
     local = one_step.strong if claim.kind == "strong" else one_step.weak
     order = None if one_step.exact else finite(local.order)
-    return Result(
-        scheme=pair.plan.scheme.label,
-        problem=pair.plan.problem.label,
-        kind="one-step",
+    return _row(
+        pair,
+        "one-step",
+        claim,
+        ruling,
+        Cost(sample=f"{pair.label}, one step", seconds=pair.local.one_step_seconds),
         bears_on=claim.kind,
         route="quadrature",
-        functional=None,
-        claimed=claim.order,
         order=order,
         low=order,
         high=order,
         exact=one_step.exact,
-        verdict=ruling.verdict,
-        sentence=ruling.sentence,
         rungs=_local_rungs(one_step, claim),
-        cost=Cost(sample=f"{pair.label}, one step", seconds=pair.local.one_step_seconds),
         terms=one_step.terms if claim.kind == "strong" else one_step.moments,
     )
 
@@ -173,46 +121,45 @@ def _sampled(
     sensitivity: tuple[Sensitivity, list[Sensitivity]],
 ) -> Result:
     plan, claim = pair.plan, a.row.claim
-    whole = pair.claim_ruling(claim, levels)
     # A claim that one-step evidence refutes is refuted in its sampled rows too.
     local = pair.one_step_ruling(claim, levels)
-    ruling = whole if local.verdict is Verdict.REFUTED else a.ruling
-    order, low, high = _bounds(a)
-    extrapolated = a.order.extrapolated if a.order is not None else None
+    ruling = local if local.verdict is Verdict.REFUTED else a.ruling
+    limit = None
+    if ruling.verdict is Verdict.SUPPORTED:
+        limit = _detection_limit(a, levels, sensitivity)
+    if limit is not None:
+        ruling = replace(ruling, sentence=f"{ruling.sentence} {_limit_sentence(limit)}")
+    order, low, high = a.bounds
     index = a.row.functional
-    limit = _detection_limit(a, levels, sensitivity)
-    sentence = ruling.sentence
-    if ruling.verdict is Verdict.SUPPORTED and limit is not None:
-        sentence = f"{sentence} {_limit_sentence(limit)}"
-    return Result(
-        scheme=plan.scheme.label,
-        problem=plan.problem.label,
-        kind=claim.kind,
+    extrapolated = a.order.extrapolated if a.order is not None else None
+    cost = Cost(
+        sample=pair.label,
+        seconds=pair.sample.seconds,
+        normals=pair.n_paths * plan.normals_per_path,
+        paths=pair.n_paths,
+        looks=pair.looks,
+        threads=threads,
+    )
+    return _row(
+        pair,
+        claim.kind,
+        claim,
+        ruling,
+        cost,
         bears_on=claim.kind,
         route="sampled",
         functional=None if index is None else plan.functionals[index].name,
-        claimed=claim.order,
         order=order,
         low=low,
         high=high,
         exact=a.exact,
-        verdict=ruling.verdict,
-        sentence=sentence,
         rungs=_rungs(pair, a, levels),
-        cost=Cost(
-            sample=pair.label,
-            seconds=pair.sample.seconds,
-            normals=pair.n_paths * plan.normals_per_path,
-            paths=pair.n_paths,
-            looks=pair.looks,
-            threads=threads,
-        ),
         extrapolated=None if extrapolated is None else finite(extrapolated.estimate),
         at=a.row.at,
         reference=None if index is None else finite(pair.references[index][0]),
         counts=a.counts,
         trusted=a.trusted,
-        detection_limit=limit if ruling.verdict is Verdict.SUPPORTED else None,
+        detection_limit=limit,
     )
 
 

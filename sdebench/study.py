@@ -12,6 +12,7 @@ import numpy as np
 
 from sdebench import discovery, ladder
 from sdebench.assess import Levels
+from sdebench.claims import claim_results
 from sdebench.detection import sensitivities
 from sdebench.evidence import Evidence, Provenance
 from sdebench.functional import STANDARD
@@ -27,7 +28,7 @@ from sdebench.request import (
     chosen_pairs,
     processors,
 )
-from sdebench.results import claim_results, results
+from sdebench.results import results
 from sdebench.sample import Plan
 from sdebench.verdict import overall
 
