@@ -19,7 +19,7 @@ import numpy as np
 import sdebench as sb
 from sdebench.discovery import find_problem, find_scheme
 from sdebench.functional import STANDARD
-from sdebench.ladder import DEFAULT
+from sdebench.ladder import DEFAULT, Ladder
 from sdebench.sample import BLOCK, Plan, Sample
 
 REPEATS = 7
@@ -31,6 +31,7 @@ def main() -> None:
     for name, aim in (("euler-maruyama", 2.0), ("milstein", 2.5)):
         for threads in (1, 2):
             sampled_ladder(name, aim, threads)
+    sampled_ladder("euler-maruyama", 2.0, 1, Ladder((8, 16, 32, 64, 128, 256)))
     hand_written("euler-maruyama")
     hand_written("milstein")
     speed_up("euler-maruyama")
@@ -40,17 +41,18 @@ def main() -> None:
     start_up()
 
 
-def sampled_ladder(name: str, aim: float, threads: int) -> None:
-    """Whole time of the default ladder over the time of drawing the same normals."""
-    plan = plan_of(name)
+def sampled_ladder(name: str, aim: float, threads: int, ladder: Ladder = DEFAULT) -> None:
+    """Whole time of a ladder over the time of drawing the same normals."""
+    plan = replace(plan_of(name), ladder=ladder)
     still = replace(plan, scheme=replace(plan.scheme, step=_stay))
     whole, overhead = [], []
     for _ in range(REPEATS):
         normals = seconds(lambda: draw_normals(plan, threads))
         whole.append(seconds(lambda: sample(plan, threads)) / normals)
         overhead.append(seconds(lambda: sample(still, threads)) / normals - 1)
-    show(f"{name} on gbm, {threads} thread(s): whole / normals", whole, f"at most {aim}")
-    show(f"{name} on gbm, {threads} thread(s): own overhead / normals", overhead, "at most 0.3")
+    what = f"{name} on gbm to {ladder.steps[-1]} steps, {threads} thread(s)"
+    show(f"{what}: whole / normals", whole, f"at most {aim}")
+    show(f"{what}: own overhead / normals", overhead, "at most 0.3")
 
 
 def hand_written(name: str) -> None:
