@@ -196,7 +196,7 @@ def _overflow(
         rung = int(np.argmax(some))
         return Ruling(
             Verdict.REFUTED,
-            f"{lost[rung]} of {sample.n_paths} paths end in NaN or infinity with "
+            f"{lost[rung]:.0f} of {sample.n_paths} paths end in NaN or infinity with "
             f"{errors.steps[rung]} steps: keep square roots, logarithms and divisions of the step "
             "inside their domain on rare paths too.",
         )

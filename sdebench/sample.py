@@ -183,12 +183,15 @@ class Walk:
         rows.fill_weak(values, states, end, [_guarded(f) for f in plan.functionals])
         rows.fill_controls(values, whole["dw"], quadratic, problem.horizon, plan.ladder.steps)
         batches = values.reshape(rows.count, BLOCK // BATCH, BATCH).sum(axis=2) / BATCH
+        lost = np.zeros(len(states))
+        if not np.all(np.isfinite(batches)):
+            lost += [BLOCK - np.count_nonzero(np.isfinite(x)) for x in states]
         measured = values[: rows.n_measured]
         return Tally(
             Moments.of(batches),
             np.square(np.maximum(measured.max(axis=1), -measured.min(axis=1))),
             np.einsum("ij,ij->i", measured, measured),
-            np.array([BLOCK - np.isfinite(x).sum() for x in states]),
+            lost,
         )
 
 

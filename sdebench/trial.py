@@ -51,19 +51,21 @@ class Trial:
         return size
 
 
-def trials(scheme: Scheme, problem: Problem, parameters: str = "") -> Iterator[Trial]:
+def trials(
+    scheme: Scheme, problem: Problem, parameters: str = "", n_paths: int = N_PATHS
+) -> Iterator[Trial]:
     """Yield trials at the start and inside the horizon, with a long and a short step."""
     sde = problem.sde.in_calculus(scheme.calculus)
     rng = np.random.default_rng(7)
     for t in probe.times(problem):
         for h in (problem.horizon / 8, problem.horizon / 512):
             law = StepLaw(scheme.noise, h, problem.decay_rate)
-            normals = [rng.standard_normal(N_PATHS) for _ in law.names]
+            normals = [rng.standard_normal(n_paths) for _ in law.names]
             outer = normal_trapezoid(0.0)[0][[0, -1]]
             for row in normals:
                 row[:2] = outer
             noise = law.from_normals(normals)
-            x = np.resize(probe.states(problem), N_PATHS)
+            x = np.resize(probe.states(problem), n_paths)
             own = {name: noise[name] for name in scheme.noise}
             yield Trial(sde, t, x, h, own, parameters)
 
