@@ -158,7 +158,8 @@ class Pair:
         if decisive.row.functional is None:
             return decisive.ruling
         name = self.plan.functionals[decisive.row.functional].name
-        return replace(decisive.ruling, sentence=f"{name}: {decisive.ruling.sentence}")
+        sentence = decisive.ruling.sentence
+        return replace(decisive.ruling, sentence=f"{name}: {sentence[0].lower()}{sentence[1:]}")
 
     def check(self, n_checks: int) -> None:
         """Raise `BenchFault` if the problem's flow and law disagree on the sample."""

@@ -108,9 +108,9 @@ def judge(
 
 
 def seen(errors: Errors, order: Order) -> str:
-    """Return 'local order 0.998 (0.99 to 1.01) between 32 and 64 steps'."""
+    """Return 'Local order 0.998 (0.99 to 1.01) between 32 and 64 steps'."""
     coarse, fine = (errors.steps[r] for r in order.counting[-2:])
-    return f"local order {shown(order.local)} between {coarse} and {fine} steps"
+    return f"Local order {shown(order.local)} between {coarse} and {fine} steps"
 
 
 def shown(interval: Interval) -> str:
