@@ -76,21 +76,31 @@ class Interval:
 
 
 @dataclass(frozen=True)
+class Trend:
+    """Where the last two local orders lead, q_before and then q.
+
+    `curbed` is where a falling order would lead, min(q, q - 2.4 (q_before - q)); `lifted` where a
+    rising one would, max(q, q + 4 (q - q_before)); `extrapolated` is 2 q - q_before, and `moved`
+    is q - q_before.
+    """
+
+    curbed: Interval
+    lifted: Interval
+    extrapolated: Interval
+    moved: Interval
+
+
+@dataclass(frozen=True)
 class Order:
     """What the counting rungs say of the order.
 
-    `counting` are the rungs that count. `local` is the local order at the finest pair of them;
-    with three, `curbed` is where a falling order would lead, min(q, q - 2.4 (q_before - q)),
-    `lifted` where a rising one would, max(q, q + 4 (q - q_before)); `extrapolated` is
-    2 q - q_before, and `moved` is q - q_before.
+    `counting` are the rungs that count, `local` is the local order at the finest pair of them, and
+    `trend` says where it leads, if three of them count.
     """
 
     counting: tuple[int, ...]
     local: Interval
-    curbed: Interval | None
-    lifted: Interval | None
-    extrapolated: Interval | None
-    moved: Interval | None
+    trend: Trend | None
 
 
 # How far a falling and a rising local order are continued. A distance to the limit that shrinks
@@ -129,20 +139,19 @@ def observed_order(errors: Errors, counting: Sequence[int], quantile: float) -> 
     *earlier, coarse, fine = counting
     local = local_order(errors, coarse, fine, quantile)
     if not earlier:
-        return Order(tuple(counting), local, None, None, None, None)
+        return Order(tuple(counting), local, None)
     before = local_order(errors, earlier[-1], coarse, quantile)
     triple = (earlier[-1], coarse, fine)
     orders = (before, local)
     falling = combined(errors, triple, (-CURB, 1 + CURB), quantile, orders)
     rising = combined(errors, triple, (-LIFT, 1 + LIFT), quantile, orders)
-    return Order(
-        tuple(counting),
-        local,
-        curbed=Interval(*(min(pair) for pair in zip(_ends(falling), _ends(local), strict=True))),
-        lifted=Interval(*(max(pair) for pair in zip(_ends(rising), _ends(local), strict=True))),
+    trend = Trend(
+        curbed=Interval(*map(min, _ends(falling), _ends(local))),
+        lifted=Interval(*map(max, _ends(rising), _ends(local))),
         extrapolated=combined(errors, triple, (-1.0, 2.0), quantile, orders),
         moved=combined(errors, triple, (-1.0, 1.0), quantile, orders),
     )
+    return Order(tuple(counting), local, trend)
 
 
 def _ends(interval: Interval) -> tuple[float, float, float]:

@@ -131,7 +131,7 @@ def _sampled(
         ruling = replace(ruling, sentence=f"{ruling.sentence} {_limit_sentence(limit)}")
     order, low, high = a.bounds
     index = a.row.functional
-    extrapolated = a.order.extrapolated if a.order is not None else None
+    trend = a.order.trend if a.order is not None else None
     cost = Cost(
         sample=pair.label,
         seconds=pair.sample.seconds,
@@ -154,7 +154,7 @@ def _sampled(
         high=high,
         exact=a.exact,
         rungs=_rungs(pair, a, levels),
-        extrapolated=None if extrapolated is None else finite(extrapolated.estimate),
+        extrapolated=None if trend is None else finite(trend.extrapolated.estimate),
         at=a.row.at,
         reference=None if index is None else finite(pair.references[index][0]),
         counts=a.counts,

@@ -16,7 +16,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from enum import Enum
 
-from sdebench.orders import Errors, Interval, Order
+from sdebench.orders import Errors, Interval, Order, Trend
 
 JUMP = 0.5
 MIN_REFUTING_RUNGS = 4
@@ -82,20 +82,19 @@ def judge(
     whether a rung's error is still not told from zero.
     """
     needed = claimed - tolerance
-    if order is None:
+    if order is None or order.trend is None:
         return _too_few(errors, counting, unresolved)
-    if order.curbed is None or order.lifted is None or order.moved is None:
-        return _too_few(errors, counting, unresolved)
-    if order.curbed.low > needed and order.moved.low > JUMP:
+    trend = order.trend
+    if trend.curbed.low > needed and trend.moved.low > JUMP:
         return Ruling(
             Verdict.UNDECIDED,
-            f"{seen(errors, order)}, a jump by {order.moved.estimate:.2g} from the pair before: no "
+            f"{seen(errors, order)}, a jump by {trend.moved.estimate:.2g} from the pair before: no "
             f"order has settled yet; try --steps {finer(errors.steps)}.",
         )
-    if order.curbed.low > needed:
+    if trend.curbed.low > needed:
         return Ruling(Verdict.SUPPORTED, f"{seen(errors, order)}, claimed {claimed:g}.")
-    if order.lifted.high >= needed:
-        return _unsettled(errors, order, needed, look)
+    if trend.lifted.high >= needed:
+        return _unsettled(errors, order, trend, needed, look)
     finest = errors.steps[counting[-1]]
     if len(counting) < MIN_REFUTING_RUNGS or finest < MIN_REFUTING_STEPS:
         return Ruling(
@@ -122,27 +121,24 @@ def shown(interval: Interval) -> str:
     return f"{interval.estimate:.{digits}f} ({low} {high})"
 
 
-def _unsettled(errors: Errors, order: Order, needed: float, look: int) -> Ruling:
+def _unsettled(errors: Errors, order: Order, trend: Trend, needed: float, look: int) -> Ruling:
     """The order is neither clearly high enough nor clearly too low: noise, or too coarse rungs."""
-    assert order.curbed is not None
-    assert order.lifted is not None
-    assert order.moved is not None
-    moved = order.moved.estimate
-    if order.local.low > needed and order.curbed.estimate <= needed:
-        trend, open_ended = f"falling by {-moved:.2g}", order.curbed.high > needed
-    elif order.local.high < needed and order.lifted.estimate >= needed:
-        trend, open_ended = f"rising by {moved:.2g}", order.lifted.low < needed
+    moved = trend.moved.estimate
+    if order.local.low > needed and trend.curbed.estimate <= needed:
+        way, open_ended = f"falling by {-moved:.2g}", trend.curbed.high > needed
+    elif order.local.high < needed and trend.lifted.estimate >= needed:
+        way, open_ended = f"rising by {moved:.2g}", trend.lifted.low < needed
     else:
         return Ruling(
             Verdict.UNDECIDED,
             f"{seen(errors, order)}; as it falls or rises it may lead from "
-            f"{order.curbed.low:.2f} to {order.lifted.high:.2f}, too wide to tell from {needed:g}; "
-            f"{_more_paths(order.curbed, needed, look)}.",
+            f"{trend.curbed.low:.2f} to {trend.lifted.high:.2f}, too wide to tell from {needed:g}; "
+            f"{_more_paths(trend.curbed, needed, look)}.",
             more_paths_help=True,
         )
     return Ruling(
         Verdict.UNDECIDED,
-        f"{seen(errors, order)}, but {trend} from the pair before: the rungs are too coarse to "
+        f"{seen(errors, order)}, but {way} from the pair before: the rungs are too coarse to "
         f"tell; try --steps {finer(errors.steps)}.",
         more_paths_help=open_ended,
     )

@@ -90,10 +90,10 @@ def test_no_continuation_of_a_trend_narrows_what_is_known_of_the_order(measures,
     steps = tuple(4 * 2**k for k in range(len(measures)))
     made = errors(steps, measures, relative * np.array(measures), power)
     found = observed_order(made, range(len(steps)), 3.0)
-    assert found.curbed.low <= found.local.low
-    assert found.curbed.estimate <= found.local.estimate
-    assert found.lifted.high >= found.local.high
-    assert found.lifted.estimate >= found.local.estimate
+    assert found.trend.curbed.low <= found.local.low
+    assert found.trend.curbed.estimate <= found.local.estimate
+    assert found.trend.lifted.high >= found.local.high
+    assert found.trend.lifted.estimate >= found.local.estimate
 
 
 @settings(max_examples=200, deadline=None)
