@@ -5,16 +5,10 @@ import sysconfig
 import traceback
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from functools import cache
 from pathlib import Path
 
 from sdebench.errors import SdebenchError, UserCodeRaised
-
-# Code of ours, of Python and of installed packages: never the user's own frames, unless the
-# function itself lives there.
-_NOT_USERS = (
-    str(Path(__file__).parent),
-    *(sysconfig.get_paths()[k] for k in ("stdlib", "purelib")),
-)
 
 
 @contextmanager
@@ -42,8 +36,15 @@ def users_frames(cause: BaseException, own: str) -> list[traceback.FrameSummary]
     return [
         frame
         for frame in traceback.extract_tb(cause.__traceback__)
-        if frame.filename == own or not frame.filename.startswith((*_NOT_USERS, "<frozen"))
+        if frame.filename == own or not frame.filename.startswith(_not_users())
     ]
+
+
+@cache
+def _not_users() -> tuple[str, ...]:
+    """Where code is of ours, of Python or of an installed package, unless the function is there."""
+    paths = sysconfig.get_paths()
+    return str(Path(__file__).parent), paths["stdlib"], paths["purelib"], "<frozen"
 
 
 def _file(function: Callable[..., object]) -> str:
