@@ -73,7 +73,7 @@ def sensitivities(
             ]
         right, *wrong = paths
         strong = [float(np.sqrt(np.mean((x - right) ** 2))) / FAULT for x in wrong]
-        weak = [[_clear(f.function(x) - f.function(right)) for x in wrong] for f in functionals]
+        weak = [[_clear(f(x) - f(right)) for x in wrong] for f in functionals]
     return Sensitivity(*strong), [Sensitivity(*pair) for pair in weak]
 
 

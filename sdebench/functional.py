@@ -15,6 +15,10 @@ class Functional:
     name: str
     function: Callable[[Array], Array]
 
+    def __call__(self, x: Array) -> Array:
+        """Return f at end points `x`, shape `(paths,)`, in float64 even if f is a condition."""
+        return np.asarray(self.function(x), dtype=np.float64)
+
 
 STANDARD = (
     Functional("mean", lambda x: x),

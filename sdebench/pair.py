@@ -85,7 +85,7 @@ class Pair:
     def references(self) -> list[tuple[float, float]]:
         """The exact E f(X_T) of each functional, with its numerical uncertainty."""
         law = self.plan.problem.law(self.plan.problem.params)
-        return [law.expectation(f.function) for f in self.plan.functionals]
+        return [law.expectation(f) for f in self.plan.functionals]
 
     def examine(self, tolerance: float) -> None:
         """Check the contract and, if it holds, take one-step evidence."""

@@ -1,5 +1,7 @@
 """Where each averaged quantity of a sample stands, and how it is made from the end points.
 
+Rows are made one by one, in their order, so that each is averaged while it is in a cache.
+
 Measured rows (one value a path):
     squares    (X^h_T - X_T)²                  one a rung
     absolute   |X^h_T - X_T|                   one a rung
@@ -14,7 +16,7 @@ regressing on them narrows the interval of a weak error by one to two orders of 
 """
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 
 import numpy as np
 
@@ -47,53 +49,36 @@ class Rows:
         first = self._weak_first + functional * self.n_rungs
         return range(first, first + self.n_rungs)
 
-    def fill_errors(
-        self, values: Array, states: Sequence[Array], worst: Sequence[Array], end: Array
-    ) -> None:
-        """Fill squares, absolute and grid from the end points of scheme and exact solution."""
-        absolute = values[self.absolute.start : self.absolute.stop]
-        for rung, x in enumerate(states):
-            np.subtract(x, end, out=absolute[rung])
-        np.abs(absolute, out=absolute)
-        np.square(absolute, out=values[self.squares.start : self.squares.stop])
-        if self.grid:
-            for rung, most in enumerate(worst):
-                np.square(most, out=values[self.grid[rung]])
+    def error_rows(
+        self, states: Sequence[Array], worst: Sequence[Array], end: Array
+    ) -> Iterator[Array]:
+        """Yield squares, absolute and grid rows from the end points of scheme and solution."""
+        errors = [x - end for x in states]
+        for error in errors:
+            yield error * error
+        for error in errors:
+            yield np.abs(error)
+        for most in worst if self.grid else ():
+            yield most * most
 
-    def fill_weak(
-        self,
-        values: Array,
-        states: Sequence[Array],
-        end: Array,
-        functions: Sequence[Callable[[Array], Array]],
-    ) -> None:
-        """Fill the paired differences of every functional, and its exact value."""
-        for i, f in enumerate(functions):
-            exact = values[self.reference[i]]
-            exact[:] = f(end)
-            for row, x in zip(self.weak(i), states, strict=True):
-                np.subtract(f(x), exact, out=values[row])
+    def weak_rows(
+        self, states: Sequence[Array], end: Array, functions: Sequence[Callable[[Array], Array]]
+    ) -> Iterator[Array]:
+        """Yield the paired differences of every functional, then their exact values."""
+        exact = [f(end) for f in functions]
+        for f, reference in zip(functions, exact, strict=True):
+            for x in states:
+                yield f(x) - reference
+        yield from exact
 
-    def fill_controls(
-        self,
-        values: Array,
-        w: Array,
-        quadratic: Sequence[Array],
-        horizon: float,
-        steps: Sequence[int],
-    ) -> None:
-        """Fill the controls from W_T and the sum of squared increments on each rung."""
-        z, two, three, four, *products = values[self.controls.start : self.controls.stop]
-        np.multiply(w, 1 / math.sqrt(horizon), out=z)
+    def control_rows(
+        self, w: Array, quadratic: Sequence[Array], horizon: float, steps: Sequence[int]
+    ) -> Iterator[Array]:
+        """Yield the controls from W_T and the sum of squared increments on each rung."""
+        z = w * (1 / math.sqrt(horizon))
         square = z * z
-        np.subtract(square, 1.0, out=two)
-        np.multiply(z, square - 3.0, out=three)
-        np.multiply(square, square - 6.0, out=four)
-        four += 3.0
-        for rung, (n, total) in enumerate(zip(steps, quadratic, strict=True)):
-            s, sz, s2 = products[N_QUADRATIC * rung : N_QUADRATIC * (rung + 1)]
-            np.subtract(total, horizon, out=s)
-            s *= math.sqrt(n / 2) / horizon
-            np.multiply(s, z, out=sz)
-            np.multiply(s, two, out=s2)
-            s2 -= math.sqrt(2 / n)
+        two = square - 1.0
+        yield from (z, two, z * (square - 3.0), square * (square - 6.0) + 3.0)
+        for n, total in zip(steps, quadratic, strict=True):
+            s = (total - horizon) * (math.sqrt(n / 2) / horizon)
+            yield from (s, s * z, s * two - math.sqrt(2 / n))

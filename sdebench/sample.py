@@ -9,7 +9,7 @@ are reduced in block order: the bits depend on nothing else, least of all on thr
 import hashlib
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import cached_property
@@ -133,7 +133,6 @@ class Walk:
         self.sde = problem.sde.in_calculus(plan.scheme.calculus)
         self.finest = StepLaw(plan.names, problem.horizon / steps[-1], problem.decay_rate)
         self.ratios = (steps[0], *plan.ladder.ratios)
-        self.values = np.empty((plan.rows.count, BLOCK))
         self.scratch = np.empty(BLOCK)
         self.streams: list[np.random.Generator] = []
         self.rungs: list[RungState] = []
@@ -178,29 +177,48 @@ class Walk:
         states = [rung.x for rung in self.rungs]
         worst = [rung.worst for rung in self.rungs]
         quadratic = [rung.quadratic for rung in self.rungs]
-        values = self.values
-        rows.fill_errors(values, states, worst, end)
-        rows.fill_weak(values, states, end, [_guarded(f) for f in plan.functionals])
-        rows.fill_controls(values, whole["dw"], quadratic, problem.horizon, plan.ladder.steps)
-        batches = values.reshape(rows.count, BLOCK // BATCH, BATCH).sum(axis=2) / BATCH
+        functions = [_guarded(f) for f in plan.functionals]
+        tally = Gathered(rows.count, rows.n_measured)
+        for row in rows.error_rows(states, worst, end):
+            tally.add(row)
+        for row in rows.weak_rows(states, end, functions):
+            tally.add(row)
+        for row in rows.control_rows(whole["dw"], quadratic, problem.horizon, plan.ladder.steps):
+            tally.add(row)
+        return tally.of(states)
+
+
+class Gathered:
+    """Batch means of rows that come one by one, and the tails of the measured ones."""
+
+    def __init__(self, n_rows: int, n_measured: int) -> None:
+        self.n_done = 0
+        self.batches = np.empty((n_rows, BLOCK // BATCH))
+        self.largest = np.empty(n_measured)
+        self.squares = np.empty(n_measured)
+
+    def add(self, row: Array) -> None:
+        """Add the next row, shape `(paths,)`."""
+        np.sum(row.reshape(-1, BATCH), axis=1, out=self.batches[self.n_done])
+        if self.n_done < len(self.largest):
+            self.largest[self.n_done] = max(row.max(), -row.min()) ** 2
+            self.squares[self.n_done] = np.einsum("i,i->", row, row)
+        self.n_done += 1
+
+    def of(self, states: Sequence[Array]) -> Tally:
+        """Return the tally of a block, with the paths lost on each rung."""
         lost = np.zeros(len(states))
-        if not np.all(np.isfinite(batches)):
+        if not np.all(np.isfinite(self.batches)):
             lost += [BLOCK - np.count_nonzero(np.isfinite(x)) for x in states]
-        measured = values[: rows.n_measured]
-        return Tally(
-            Moments.of(batches),
-            np.square(np.maximum(measured.max(axis=1), -measured.min(axis=1))),
-            np.einsum("ij,ij->i", measured, measured),
-            lost,
-        )
+        return Tally(Moments.of(self.batches / BATCH), self.largest, self.squares, lost)
 
 
 def _guarded(functional: Functional) -> Callable[[Array], Array]:
-    """Return a functional's function whose exceptions are told as its own."""
+    """Return a functional whose exceptions are told as its own."""
 
     def values(x: Array) -> Array:
         with blamed(f"Functional '{functional.name}'", functional.function, "while sampling"):
-            return functional.function(x)
+            return functional(x)
 
     return values
 

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from sdebench.functional import STANDARD
+from sdebench.functional import STANDARD, Functional
 
 X = np.array([-2.0, 0.5, 3.0])
 EXPECTED = {"mean": X, "second-moment": X**2, "cos": np.cos(X)}
@@ -23,3 +23,9 @@ def test_a_standard_functional_leaves_its_input_alone(functional):
     x = X.copy()
     functional.function(x)
     assert np.array_equal(x, X)
+
+
+def test_a_condition_is_taken_as_nought_and_one():
+    digital = Functional("digital", lambda x: x > 0)
+    assert digital(X).tolist() == [0.0, 1.0, 1.0]
+    assert digital(X).dtype == np.float64

@@ -34,13 +34,11 @@ def test_there_is_a_square_an_absolute_and_a_weak_row_for_every_rung():
 def filled():
     """Two rungs, one functional, three paths; scheme, worst deviation and end points by hand."""
     rows = Rows(2, 1, True)
-    values = np.full((rows.count, 3), np.nan)
     end = np.array([1.0, 2.0, 3.0])
     states = [np.array([1.5, 2.0, 2.0]), np.array([1.25, 1.75, 3.0])]
     worst = [np.array([0.5, 1.0, 2.0]), np.array([0.25, 0.5, 0.0])]
-    rows.fill_errors(values, states, worst, end)
-    rows.fill_weak(values, states, end, [lambda x: x * x])
-    return rows, values
+    made = [*rows.error_rows(states, worst, end), *rows.weak_rows(states, end, [np.square])]
+    return rows, np.array(made)
 
 
 def test_squares_are_the_squared_errors(filled):
@@ -77,9 +75,9 @@ def controls() -> np.ndarray:
     rows = Rows(len(STEPS), 0, False)
     dw = np.random.default_rng(9).standard_normal((8, N_PATHS)) * math.sqrt(HORIZON / 8)
     quadratic = [(dw.reshape(n, 8 // n, -1).sum(axis=1) ** 2).sum(axis=0) for n in STEPS]
-    values = np.empty((rows.count, N_PATHS))
-    rows.fill_controls(values, dw.sum(axis=0), quadratic, HORIZON, STEPS)
-    return values[rows.controls]
+    made = np.array(list(rows.control_rows(dw.sum(axis=0), quadratic, HORIZON, STEPS)))
+    assert len(made) == len(rows.controls)
+    return made
 
 
 @pytest.mark.parametrize("control", range(10))
@@ -107,10 +105,9 @@ def test_the_quadratic_control_has_variance_one_on_every_rung(controls, control)
 
 def test_controls_of_one_path_are_the_polynomials_by_hand():
     rows = Rows(1, 0, False)
-    values = np.empty((rows.count, 1))
     w, total, n = 2.0, 5.0, 2
-    rows.fill_controls(values, np.array([w]), [np.array([total])], 4.0, [n])
+    made = list(rows.control_rows(np.array([w]), [np.array([total])], 4.0, [n]))
     z, s = w / 2, (total - 4.0) / math.sqrt(2 * 4.0 * 2.0)
     he = [z, z**2 - 1, z**3 - 3 * z, z**4 - 6 * z**2 + 3]
     expected = [*he, s, s * z, s * (z**2 - 1) - math.sqrt(2 / n)]
-    assert np.abs(values[rows.controls, 0] - expected).max() <= round_off(3.0, 16)
+    assert np.abs(np.array(made)[:, 0] - expected).max() <= round_off(3.0, 16)

@@ -289,3 +289,15 @@ def test_a_law_that_is_off_ends_the_run_as_a_fault_of_the_bench():
 
     with pytest.raises(sb.BenchFault):
         sb.measure("milstein", **(QUICK | {"on": replace(problem, law=off)}))
+
+
+def test_a_payoff_that_is_a_condition_is_measured():
+    """It would catch a difference of truth values, which NumPy refuses."""
+    evidence = sb.measure(
+        "milstein", on="gbm", functionals=lambda x: x > 0.6, looks=1, threads=1, steps=(4, 8, 16)
+    )
+    row = next(r for r in evidence.results if r.functional not in (None, *KNOWN_FUNCTIONALS))
+    assert all(rung.error is not None for rung in row.rungs)
+
+
+KNOWN_FUNCTIONALS = ("mean", "second-moment", "cos")
