@@ -145,7 +145,7 @@ def told() -> Iterator[None]:
         click.echo(f"sdebench: {error}", err=True)
         sys.exit(error.exit_code)
     except KeyboardInterrupt:
-        click.echo("sdebench: interrupted; nothing was written.", err=True)
+        click.echo("sdebench: interrupted.", err=True)
         sys.exit(130)
 
 

@@ -14,7 +14,7 @@ from sdebench.assess import Assessment, Levels, Row, assess, check_references
 from sdebench.contract import Breach, first_breach
 from sdebench.integrator import Claim
 from sdebench.onestep import OneStep, measure_one_step
-from sdebench.sample import BLOCK, Plan, Sample
+from sdebench.sample import Plan, Sample
 from sdebench.verdict import Ruling, Verdict, overall
 
 FIRST_BLOCKS = 2  # blocks of paths in the first look; every further look doubles the sample
@@ -164,8 +164,3 @@ class Pair:
     def check(self, n_checks: int) -> None:
         """Raise `BenchFault` if the problem's flow and law disagree on the sample."""
         check_references(self.sample, self.references, n_checks)
-
-    @property
-    def n_paths(self) -> int:
-        """Paths sampled so far."""
-        return self.sample.n_blocks * BLOCK

@@ -135,8 +135,8 @@ def _sampled(
     cost = Cost(
         sample=pair.label,
         seconds=pair.sample.seconds,
-        normals=pair.n_paths * plan.normals_per_path,
-        paths=pair.n_paths,
+        normals=pair.sample.n_paths * plan.normals_per_path,
+        paths=pair.sample.n_paths,
         looks=pair.looks,
         threads=threads,
     )

@@ -80,14 +80,13 @@ class StepLaw:
                     value += self.factor[row, column] * normals[column]
         return dict(zip(self.names, normals, strict=True))
 
-    def nodes(self, first: int | Rule, n_rest: int) -> tuple[dict[str, Array], Array]:
+    def nodes(self, first: Rule, n_rest: int) -> tuple[dict[str, Array], Array]:
         """Return quadrature nodes of the functionals and their weights (which sum to 1).
 
-        `first` is the rule for dw, or a number of Gauss–Hermite nodes; `n_rest` is that number for
-        each further functional given the ones before.
+        `first` is the rule for dw, `n_rest` the number of Gauss–Hermite nodes for each further
+        functional given the ones before.
         """
-        rules = [gauss_hermite(first) if isinstance(first, int) else first]
-        rules += [gauss_hermite(n_rest)] * (len(self.names) - 1)
+        rules = [first] + [gauss_hermite(n_rest)] * (len(self.names) - 1)
         grids = np.meshgrid(*(x for x, _ in rules), indexing="ij")
         weights = np.ones(())
         for _, w in rules:

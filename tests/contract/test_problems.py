@@ -11,7 +11,7 @@ from sdebench.admission import check_problem
 from sdebench.expansion import Setting, expand, limit
 from sdebench.functional import STANDARD
 from sdebench.probe import parameter_sets, states, time_scale, times
-from sdebench.wiener import StepLaw, concatenate
+from sdebench.wiener import StepLaw, concatenate, gauss_hermite
 from tests.tolerance import round_off
 
 # Operations behind one exact step, those inside exp and the like included: a formula has some
@@ -68,7 +68,7 @@ def test_the_law_is_that_of_the_flow(problem, functional, which):
     step = StepLaw(p.flow_noise, p.horizon, p.decay_rate)
     means, scale = [], 0.0
     for n in (64, 48):
-        nodes, weights = step.nodes(n, n if len(step.names) < 3 else 12)
+        nodes, weights = step.nodes(gauss_hermite(n), n if len(step.names) < 3 else 12)
         noise = sb.Noise(**{name: nodes[name] for name in p.flow_noise})
         end = p.exact_step(0.0, np.full(len(weights), p.start), p.horizon, noise)
         values = functional.function(end)

@@ -8,6 +8,8 @@ from sdebench.evidence import Result, Rung
 from tests.tolerance import FALSE_ALARM
 
 LOOKS = 3  # 131072 paths
+# With seed 5 the strong row of Euler–Maruyama on gbm:mu=0.3,sigma=0.4 is not trusted, for its tail,
+# and would be skipped; no comparison fails with either seed.
 SEED = 6
 
 
@@ -18,7 +20,8 @@ def rows(
     """Return the sampled rows of a run by 'strong' or the functional's name.
 
     The confidence makes every interval miss with probability 1e-6 where batch means are normal;
-    squares of errors are skewed, so that a strong interval may miss some ten times as often.
+    squares of errors are skewed, so that a strong interval may miss more often (some ten times: an
+    estimate, not measured).
     """
     evidence = sb.measure(
         scheme,

@@ -11,6 +11,7 @@ import pytest
 
 import sdebench as sb
 from sdebench import discovery
+from sdebench.wiener import gauss_hermite
 from tests.tolerance import round_off
 
 PROBLEMS = (
@@ -57,7 +58,7 @@ def test_the_flow_over_the_horizon_has_the_mean_and_second_moment_of_the_law(spe
     """By Gauss–Hermite quadrature, 60 nodes a functional, exact far below round-off here."""
     problem = sb.problem(spec)
     law = sb.StepLaw(problem.flow_noise, problem.horizon, problem.decay_rate)
-    noise, weights = law.nodes(60, 60 if len(law.names) == 2 else 1)
+    noise, weights = law.nodes(gauss_hermite(60), 60 if len(law.names) == 2 else 1)
     start = np.full(len(weights), problem.start)
     end = problem.exact_step(0.0, start, problem.horizon, sb.Noise(**noise))
     for power in (1, 2):

@@ -88,14 +88,14 @@ def test_a_step_that_breaks_its_contract_is_not_measured():
 
 def test_the_first_look_draws_the_first_blocks(looked_at):
     assert looked_at.looks == 1
-    assert looked_at.n_paths == FIRST_BLOCKS * BLOCK
+    assert looked_at.sample.n_paths == FIRST_BLOCKS * BLOCK
 
 
 def test_every_further_look_doubles_the_sample(looked_at):
     looked_at.look(LEVELS, 1, lambda: None)
     looked_at.look(LEVELS, 1, lambda: None)
     assert looked_at.looks == 3
-    assert looked_at.n_paths == 4 * FIRST_BLOCKS * BLOCK
+    assert looked_at.sample.n_paths == 4 * FIRST_BLOCKS * BLOCK
 
 
 def test_the_next_look_is_announced(looked_at):

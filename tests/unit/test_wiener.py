@@ -83,14 +83,14 @@ def test_the_arrays_of_normals_are_reused():
 
 def test_nodes_reproduce_the_covariance():
     law = StepLaw(FUNCTIONALS, H, 1.1)
-    nodes, weights = law.nodes(8, 4)
+    nodes, weights = law.nodes(gauss_hermite(8), 4)
     values = np.array([nodes[n] for n in FUNCTIONALS])
     scale = float(np.abs(law.covariance).max())
     assert np.abs((values * weights) @ values.T - law.covariance).max() <= round_off(scale, 200)
 
 
 def test_weights_of_nodes_sum_to_one():
-    _, weights = StepLaw(FUNCTIONALS, H, 1.1).nodes(7, 3)
+    _, weights = StepLaw(FUNCTIONALS, H, 1.1).nodes(gauss_hermite(7), 3)
     assert len(weights) == 7 * 3 * 3
     assert abs(weights.sum() - 1) <= round_off(1.0, len(weights))
 
