@@ -3,6 +3,8 @@
 import math
 from decimal import Decimal
 
+MOST_DIGITS = 8  # after the point, before a power of ten is split off
+
 
 def with_uncertainty(value: float | None, half_width: float | None) -> str:
     """Return '0.00321 ± 0.00004': two digits of the half-width if it starts with 1, else one.
@@ -20,7 +22,7 @@ def with_uncertainty(value: float | None, half_width: float | None) -> str:
     if Decimal(half_width).scaleb(-place) < Decimal("1.95"):
         place -= 1
     size = max(abs(value), half_width)
-    if 1e-4 <= size < 1e6:
+    if 1e-4 <= size < 1e6 and -place <= MOST_DIGITS:
         digits = max(-place, 0)
         return f"{value:.{digits}f} ± {half_width:.{digits}f}"
     exponent = math.floor(math.log10(size))
@@ -35,20 +37,51 @@ def order(value: float | None) -> str:
 
 
 def interval(value: float | None, low: float | None, high: float | None, exact: bool) -> str:
-    """Return '0.531 (0.515 to 0.546)', 'exact', or '' where there is no order."""
+    """Return '0.531 (0.515 to 0.546)', 'exact', or '' where there is no order.
+
+    Two digits of the smaller half-width, three to five after the point; the value alone where its
+    bounds round to it.
+
+    >>> interval(0.50021, 0.500208, 0.500212, False)
+    '0.50021'
+    """
     if exact:
         return "exact"
     if value is None:
         return ""
-    width = (
-        min(abs(value - end) for end in (low, high) if end is not None)
-        if (low is not None or high is not None)
-        else 0.0
-    )
-    digits = 3 if width >= 0.001 or width == 0 else 4
+    widths = [abs(value - end) for end in (low, high) if end is not None and end != value]
+    digits = min(max(1 - math.floor(math.log10(min(widths))), 3), 5) if widths else 3
     below = "any" if low is None else f"{low:.{digits}f}"
     above = "any" if high is None else f"{high:.{digits}f}"
-    return f"{value:.{digits}f} ({below} to {above})"
+    shown = f"{value:.{digits}f}"
+    return shown if below == above == shown else f"{shown} ({below} to {above})"
+
+
+def microseconds(seconds: float | None) -> str:
+    """Return a time in microseconds to two digits, or '' for none.
+
+    >>> microseconds(2.74e-05)
+    '27 µs'
+    """
+    return "" if seconds is None else f"{_two_digits(seconds * 1e6)} µs"
+
+
+def _two_digits(value: float) -> str:
+    rounded = float(f"{value:.1e}")
+    place = 1 - math.floor(math.log10(abs(rounded))) if rounded else 0
+    return f"{rounded:.{max(place, 0)}f}"
+
+
+def ratio(value: float | None, low: float | None, high: float | None) -> str:
+    """Return a ratio as `interval` does, with significant digits where it is far from 1.
+
+    >>> ratio(3.1e-7, 3.09e-7, 3.11e-7)
+    '3.1e-07 (3.09e-07 to 3.11e-07)'
+    """
+    if value is None or 0.01 <= value < 1000:
+        return interval(value, low, high, exact=False)
+    below, above = ("any" if end is None else f"{end:.3g}" for end in (low, high))
+    return f"{value:.3g} ({below} to {above})"
 
 
 def claimed(value: float | None) -> str:

@@ -42,7 +42,7 @@ def rungs_table(result: Result) -> Table:
         (
             str(rung.steps),
             f"{rung.h:.6g}",
-            "NaN or infinity"
+            (rung.dropped or "NaN or infinity")
             if rung.error is None
             else numbers.with_uncertainty(rung.error, rung.uncertainty),
             "" if rung.local_order is None else numbers.order(rung.local_order),
@@ -52,7 +52,9 @@ def rungs_table(result: Result) -> Table:
     ]
     what = result.functional or ("largest on the grid" if result.at == "grid" else "")
     title = ", ".join(
-        part for part in (f"{result.scheme} on {result.problem}", result.kind, what) if part
+        part
+        for part in (f"{result.scheme} on {result.problem}", result.kind, what, result.route)
+        if part
     )
     headings = ("steps", "h", "error", "local order", "counts")
     return Table(title, headings, rows, frozenset({0, 1, 2, 3}))
@@ -79,6 +81,37 @@ def refuted_by_terms(result: Result) -> bool:
     """Return whether a one-step row is refuted by a term that its claim needs."""
     wrong = any(term.differs and term.required for term in result.terms)
     return result.kind == "one-step" and result.verdict is Verdict.REFUTED and wrong
+
+
+def reasons_for_sampling(evidence: Evidence) -> list[str]:
+    """Return a sentence for each reason why something could not be propagated."""
+    found: dict[tuple[str, str], list[str]] = {}
+    for row in evidence.results:
+        if row.why_sampled is not None:
+            done = "Sampled" if row.route == "sampled" else "Not propagated"
+            pairs = found.setdefault((done, row.why_sampled), [])
+            pair = f"{row.scheme} on {row.problem}"
+            if pair not in pairs:
+                pairs.append(pair)
+    return [f"{done}, since {why}: {', '.join(pairs)}." for (done, why), pairs in found.items()]
+
+
+def checks(evidence: Evidence) -> str | None:
+    """Return the sentence on samples that propagated errors were held against, if there are any."""
+    rows = [row for row in evidence.results if row.check]
+    held = [row for row in rows if row.trusted]
+    if not rows:
+        return None
+    spared = len(rows) - len(held)
+    tail = f"; {spared} rows with too heavy a tail were not compared" if spared else ""
+    if not held:
+        return f"No propagated error could be held against a sample{tail}."
+    paths = sum({row.cost.sample: row.cost.paths for row in held}.values())
+    finest = max(rung.steps for row in held for rung in row.rungs)
+    return (
+        f"Propagated errors agree with a check on {paths} sampled paths "
+        f"({len(held)} rows, rungs to {finest} steps){tail}."
+    )
 
 
 def _coefficient(value: float | None, term: Term) -> str:

@@ -5,7 +5,7 @@ Plain text where the output is no terminal; colours are left out where NO_COLOR 
 
 import os
 import sys
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import contextmanager
 from itertools import groupby
 from time import monotonic
@@ -15,14 +15,19 @@ from rich.console import Console
 from rich.progress import BarColumn, Progress, TaskProgressColumn, TextColumn
 from rich.table import Table as Grid
 from rich.text import Text
+from sdebench.reports.advice import advice_table, comparison_table
 from sdebench.reports.tables import (
     Table,
+    checks,
     claims_table,
+    reasons_for_sampling,
     refuted_by_terms,
     rungs_table,
     terms_table,
 )
 
+from sdebench.advise import Advice
+from sdebench.compare import Comparison
 from sdebench.evidence import ClaimResult, Evidence, Result
 from sdebench.verdict import Verdict
 
@@ -62,7 +67,9 @@ def show_evidence(evidence: Evidence, on: Console) -> None:
     if any(claim.verdict is not Verdict.SUPPORTED for claim in evidence.claims):
         on.print()
         show_sentences(evidence, on)
-    shown = [row for row in evidence.results if single or _explains(row, evidence)]
+    shown = [
+        row for row in evidence.results if (single and not row.check) or _explains(row, evidence)
+    ]
     for row in shown:
         if row.terms and (single or refuted_by_terms(row)):
             on.print()
@@ -72,8 +79,27 @@ def show_evidence(evidence: Evidence, on: Console) -> None:
             show_table(rungs_table(row), on)
             if row.verdict is Verdict.SUPPORTED:
                 on.print(Text(row.sentence), soft_wrap=True)
+    notes = [*reasons_for_sampling(evidence), checks(evidence)]
     on.print()
+    for note in filter(None, notes):
+        on.print(Text(note), soft_wrap=True)
     on.print(_summary(evidence), soft_wrap=True)
+
+
+def show_advice(advice: Sequence[Advice], on: Console) -> None:
+    """Print the steps that each scheme needs, with a sentence on what was not measured itself."""
+    show_table(advice_table(advice), on)
+    for each in advice:
+        if each.how != "measured":
+            on.print(Text(f"{each.scheme}: {each.sentence}"), soft_wrap=True)
+
+
+def show_comparisons(comparisons: Sequence[Comparison], on: Console) -> None:
+    """Print every comparison as a table with the sentence that sums it up."""
+    for comparison in comparisons:
+        show_table(comparison_table(comparison), on)
+        on.print(Text(comparison.sentence), soft_wrap=True)
+        on.print()
 
 
 def show_table(table: Table, on: Console) -> None:

@@ -3,6 +3,9 @@
 The public door: everything a scheme, a problem or a study needs is imported from here.
 """
 
+from sdebench.advise import Advice, advise
+from sdebench.compare import Comparison, compare
+from sdebench.coordinate import Coordinate
 from sdebench.discovery import find_problem as problem
 from sdebench.errors import BenchFault, SdebenchError
 from sdebench.evidence import Evidence, load, schema
@@ -17,9 +20,12 @@ from sdebench.wiener import Noise, StepLaw, concatenate
 
 __all__ = [
     "SDE",
+    "Advice",
     "Array",
     "BenchFault",
     "Claim",
+    "Comparison",
+    "Coordinate",
     "Evidence",
     "Functional",
     "Ladder",
@@ -32,6 +38,8 @@ __all__ = [
     "SdebenchError",
     "StepLaw",
     "Verdict",
+    "advise",
+    "compare",
     "concatenate",
     "load",
     "measure",

@@ -7,10 +7,18 @@ from typing import Literal
 
 import numpy as np
 
+from sdebench.constant import error_constant, limiting_order
 from sdebench.errors import BadFunctional, BenchFault
 from sdebench.evidence import finite
 from sdebench.integrator import Claim
-from sdebench.orders import Errors, Order, counting_rungs, observed_order, student_quantile
+from sdebench.orders import (
+    Errors,
+    Interval,
+    Order,
+    counting_rungs,
+    observed_order,
+    student_quantile,
+)
 from sdebench.sample import Sample, Tally
 from sdebench.sde import Array
 from sdebench.verdict import Ruling, Verdict, finer, judge
@@ -56,21 +64,32 @@ class Row:
 
 @dataclass(frozen=True)
 class Assessment:
-    """What a sample says of one row.
+    """What one route says of one row.
 
-    `counts` is false for a functional with fewer than two resolved rungs; `shares` are the
-    largest path's part in the sum of squares, a rung.
+    `counts` is false for a functional with fewer than two resolved rungs. Of a sample, `shares`
+    are the largest path's part in the sum of squares, a rung; of propagation, `dropped` says why
+    a rung was, or None.
     """
 
     row: Row
+    route: Literal["sampled", "propagated"]
     errors: Errors
     order: Order | None
     quantile: float
     exact: bool
     counts: bool
     trusted: bool
-    shares: Array
     ruling: Ruling
+    shares: Array | None = None
+    dropped: tuple[str | None, ...] = ()
+
+    def constant(self, horizon: float) -> tuple[float, Interval] | None:
+        """The order that the errors settle at and their constant, where they settle."""
+        if self.order is None or not self.trusted:
+            return None
+        p = limiting_order(self.order)
+        found = p and error_constant(self.errors, self.order, p, horizon, self.quantile)
+        return (p, found) if p and found else None
 
     @property
     def bounds(self) -> tuple[float | None, float | None, float | None]:
@@ -91,7 +110,7 @@ def assess(sample: Sample, row: Row, levels: Levels, look: int, scale: float) ->
     with np.errstate(all="ignore"):
         shares = np.nan_to_num(tally.largest[index] / tally.squares[index])
     size = np.sqrt(np.abs(tally.moments.mean[list(rows.squares)]))
-    exact = bool(np.all(size <= _floors(sample, scale)))
+    exact = bool(np.all(size <= round_off(sample.plan.ladder.steps, scale)))
     # An error as large as the solution is that of an unstable step size, and no convergence.
     counting = [r for r in counting_rungs(errors, quantile) if size[r] <= scale]
     order = None if exact else observed_order(errors, counting, quantile)
@@ -112,7 +131,9 @@ def assess(sample: Sample, row: Row, levels: Levels, look: int, scale: float) ->
         )
     )
     counts = exact or n_resolved >= 2 or ruling.verdict is Verdict.REFUTED
-    return Assessment(row, errors, order, quantile, exact, counts, trusted, shares, ruling)
+    return Assessment(
+        row, "sampled", errors, order, quantile, exact, counts, trusted, ruling, shares
+    )
 
 
 def measured(sample: Sample, row: Row, scale: float) -> Errors:
@@ -122,7 +143,7 @@ def measured(sample: Sample, row: Row, scale: float) -> Errors:
     """
     assert sample.tally is not None
     moments, ladder = sample.tally.moments, sample.plan.ladder
-    floors = _floors(sample, scale)
+    floors = round_off(sample.plan.ladder.steps, scale)
     if row.functional is None:
         estimate, power = moments.estimate(_rows(sample, row)), 2
     else:
@@ -174,8 +195,9 @@ def _rows(sample: Sample, row: Row) -> list[int]:
     return list(rows.grid if row.at == "grid" else rows.squares)
 
 
-def _floors(sample: Sample, scale: float) -> Array:
-    return ROUND_OFF * scale * np.array(sample.plan.ladder.steps, dtype=float)
+def round_off(steps: Sequence[int], scale: float) -> Array:
+    """Return the round-off of end points of size `scale` after so many steps."""
+    return ROUND_OFF * scale * np.array(steps, dtype=float)
 
 
 def _overflow(
@@ -200,6 +222,7 @@ def _overflow(
             f"{lost[rung]:.0f} of {sample.n_paths} paths end in NaN or infinity with "
             f"{errors.steps[rung]} steps: keep square roots, logarithms and divisions of the step "
             "inside their domain on rare paths too.",
+            lasting=True,
         )
     rung = int(np.argmax(~np.isfinite(errors.measures) | (lost > 0)))
     return Ruling(

@@ -30,9 +30,8 @@ def _claim(
     pair: Pair, claim: Claim | None, ruling: Ruling, decisive: Assessment | None
 ) -> ClaimResult:
     order, low, high = decisive.bounds if decisive is not None else (None, None, None)
-    index = decisive.row.functional if decisive is not None else None
     return ClaimResult(
-        functional=None if index is None else pair.plan.functionals[index].name,
+        functional=None if decisive is None else pair.name_of(decisive.row),
         scheme=pair.plan.scheme.label,
         problem=pair.plan.problem.label,
         kind=claim.kind if claim is not None else "contract",

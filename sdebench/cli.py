@@ -47,7 +47,11 @@ def cli() -> None:
     help="A problem, with parameters if wanted: gbm:mu=1.5,sigma=0.5. May be repeated. "
     "Default: every problem the scheme applies to.",
 )
-@click.option("--steps", type=Steps(), help="The rungs of the ladder.  [default: 4,8,16,32,64]")
+@click.option(
+    "--steps",
+    type=Steps(),
+    help="The rungs of the ladder.  [default: 4 to 64, and to 4096 where errors are propagated]",
+)
 @click.option(
     "--functional",
     "functionals",
@@ -60,9 +64,8 @@ def cli() -> None:
 )
 @click.option(
     "--route",
-    type=click.Choice(["sampled"]),
-    default="sampled",
-    help="How global errors are obtained.",
+    type=click.Choice(["propagated", "sampled"]),
+    help="One route to errors alone.  [default: propagated where it applies, checked by a sample]",
 )
 @click.option("--seed", type=int, default=1, show_default=True, help="Same seed, same bits.")
 @click.option("--confidence", type=float, default=0.95, show_default=True, help="Of intervals.")
@@ -78,7 +81,6 @@ def measure(
     functionals: tuple[str, ...],
     save: Path | None,
     quiet: bool,
-    route: str,
     **options: Any,
 ) -> None:
     """Measure schemes and judge their claims.
@@ -101,6 +103,75 @@ def measure(
     show = terminal.show_sentences if quiet else terminal.show_evidence
     show(evidence, terminal.console())
     sys.exit(evidence.exit_code)
+
+
+@cli.command()
+@click.argument("schemes", metavar="[SCHEME]...", nargs=-1)
+@click.option("--on", "problem", metavar="PROBLEM", required=True, help="The problem.")
+@click.option("--error", type=float, required=True, metavar="E", help="The target of the error.")
+@click.option(
+    "--kind",
+    type=click.Choice(["strong", "weak"]),
+    default="strong",
+    show_default=True,
+    help="Which error: the root mean square on one path, or that of expectations.",
+)
+@click.option(
+    "--functional",
+    "functionals",
+    metavar="NAME",
+    multiple=True,
+    help="A weak functional that is to meet the target: mean, second-moment, cos or "
+    "file.py:function. May be repeated.  [default: the first three]",
+)
+@click.option("--seed", type=int, default=1, show_default=True, help="Of what is sampled.")
+@click.option("--confidence", type=float, default=0.95, show_default=True, help="Of intervals.")
+@click.option("--threads", type=int, help="Threads; no result depends on it.")
+def advise(
+    schemes: tuple[str, ...], problem: str, functionals: tuple[str, ...], **options: Any
+) -> None:
+    """Find the largest step of each scheme that keeps an error below a target.
+
+    SCHEME is a registered name or file.py:function; none means every one that applies. The
+    cheapest, by measured time a path, comes first.
+    """
+    from sdebench.advise import advise as run
+    from sdebench.reports import terminal
+
+    tell_faults()
+    found = run(schemes or None, on=problem, functionals=functionals or None, **options)
+    terminal.show_advice(found, terminal.console())
+    sys.exit(0 if any(each.steps is not None for each in found) else 3)
+
+
+@cli.command()
+@click.argument("old")
+@click.argument("new")
+@click.option(
+    "--on",
+    "problems",
+    metavar="PROBLEM",
+    multiple=True,
+    help="A problem. May be repeated.  [default: every problem that both apply to]",
+)
+@click.option("--steps", type=Steps(), help="The rungs of the ladder.")
+@click.option("--functional", "functionals", metavar="NAME", multiple=True, help="As in measure.")
+@click.option("--seed", type=int, default=1, show_default=True, help="Of what is sampled.")
+@click.option("--confidence", type=float, default=0.95, show_default=True, help="Of intervals.")
+@click.option("--threads", type=int, help="Threads; no error depends on it.")
+def compare(
+    old: str, new: str, problems: tuple[str, ...], functionals: tuple[str, ...], **options: Any
+) -> None:
+    """Hold the errors, error constants and cost of two integrators against one another.
+
+    OLD and NEW are registered names or file.py:function.
+    """
+    from sdebench.compare import compare as run
+    from sdebench.reports import terminal
+
+    tell_faults()
+    found = run(old, new, on=problems or None, functionals=functionals, **options)
+    terminal.show_comparisons(found, terminal.console())
 
 
 @cli.command()

@@ -149,6 +149,8 @@ def find_functional(given: str | Functional | Callable[[Array], Array]) -> Funct
         raise UnknownName("functional", given, standard)
     path, _, name = given.rpartition(":")
     function = _attribute(load_file(path), path, name, "function", callable)
+    if isinstance(function, Functional):
+        return replace(function, name=given)
     return Functional(given, function)
 
 

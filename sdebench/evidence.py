@@ -22,7 +22,11 @@ Count = Annotated[int, msgspec.Meta(ge=0)]
 
 
 class Rung(msgspec.Struct, frozen=True, kw_only=True):
-    """One step size: the error with the half-width of its interval at the confidence C."""
+    """One step size: the error with its uncertainty.
+
+    That is the half-width of an interval at the confidence C where the error is sampled, else a
+    numerical bound. `dropped` says why a propagated rung was.
+    """
 
     steps: int
     h: float
@@ -34,6 +38,7 @@ class Rung(msgspec.Struct, frozen=True, kw_only=True):
     local_order: float | None = None
     largest_share: float | None = None
     non_finite: Count = 0
+    dropped: str | None = None
 
 
 class Term(msgspec.Struct, frozen=True, kw_only=True):
@@ -71,14 +76,24 @@ class DetectionLimit(msgspec.Struct, frozen=True, kw_only=True):
     diffusion: float | None
 
 
+class ErrorConstant(msgspec.Struct, frozen=True, kw_only=True):
+    """C in error ~ C h^p as h → 0, with p = `order`, and bounds on it."""
+
+    order: float
+    value: float
+    low: float
+    high: float
+
+
 class Result(msgspec.Struct, frozen=True, kw_only=True):
     """One row of evidence on one scheme and problem.
 
     `low, high` bound the population local order at the finest counting pair of rungs,
     simultaneously over the run; `high` is null where there is no upper bound, all three are null
     where there is no order. `extrapolated` is the Richardson value. `bears_on` is the claim that
-    the row is evidence for; a row that does not count is shown and decides nothing. `reference`
-    is the exact E f(X_T).
+    the row is evidence for; a row that does not count is shown and decides nothing. A `check` is
+    a sample held against propagated errors; `why_sampled` says why a row could not be propagated.
+    `reference` is the exact E f(X_T).
     """
 
     scheme: str
@@ -97,11 +112,14 @@ class Result(msgspec.Struct, frozen=True, kw_only=True):
     cost: Cost
     bears_on: Literal["strong", "weak"] | None = None
     counts: bool = True
+    check: bool = False
+    why_sampled: str | None = None
     extrapolated: float | None = None
     at: Literal["horizon", "grid"] | None = None
     reference: float | None = None
     trusted: bool = True
     detection_limit: DetectionLimit | None = None
+    error_constant: ErrorConstant | None = None
     terms: list[Term] = []
 
 

@@ -9,6 +9,7 @@ import numpy as np
 
 from sdebench.errors import BadOption
 
+CHECKED_STEPS = 64
 MOST_STEPS = 2**20  # beyond, one block of paths alone takes minutes
 
 
@@ -45,9 +46,16 @@ class Ladder:
         return tuple(b // a for a, b in pairwise(self.steps))
 
     @property
+    def coarse_part(self) -> "Ladder":
+        """The rungs that a modest sample can check: those to 64 steps, three at least."""
+        few = tuple(n for n in self.steps if n <= CHECKED_STEPS)
+        return Ladder(few if len(few) >= 3 else self.steps[:3])
+
+    @property
     def octaves(self) -> tuple[float, ...]:
         """log2 of `ratios`: the distance between neighbouring rungs."""
         return tuple(math.log2(r) for r in self.ratios)
 
 
 DEFAULT = Ladder((4, 8, 16, 32, 64))
+PROPAGATED = Ladder((4, 16, 64, 256, 1024, 4096))

@@ -95,12 +95,14 @@ class Order:
     """What the counting rungs say of the order.
 
     `counting` are the rungs that count, `local` is the local order at the finest pair of them, and
-    `trend` says where it leads, if three of them count.
+    `trend` says where it leads, if three of them count. `outlier` is a rung whose error stands
+    out from those about it, with the factor by which it does.
     """
 
     counting: tuple[int, ...]
     local: Interval
     trend: Trend | None
+    outlier: tuple[int, float] | None = None
 
 
 # How far a falling and a rising local order are continued. A distance to the limit that shrinks
@@ -151,7 +153,28 @@ def observed_order(errors: Errors, counting: Sequence[int], quantile: float) -> 
         extrapolated=combined(errors, triple, (-1.0, 2.0), quantile, orders),
         moved=combined(errors, triple, (-1.0, 1.0), quantile, orders),
     )
-    return Order(tuple(counting), local, trend)
+    return Order(tuple(counting), local, trend, _outlier(errors, counting, quantile))
+
+
+OUTSTANDING = 1.0  # orders by which the local order falls to an outlier; it rises by half as many
+
+
+def _outlier(errors: Errors, counting: Sequence[int], quantile: float) -> tuple[int, float] | None:
+    """Return the rung whose error stands out, with the factor by which it does.
+
+    Errors shrink up to there; the local order falls by one or more to it, and after it rises above
+    those before and beyond. Two terms of an error that cancel make it too small on a rung, and
+    orders about that are high first, or negative.
+    """
+    orders = [local_order(errors, a, b, quantile) for a, b in pairwise(counting)]
+    for i in range(1, len(orders) - 1):
+        before, into, out = orders[i - 1 : i + 2]
+        level = min(before.high, orders[min(i + 2, len(orders) - 1)].high)
+        falls = before.low > 0 and before.low - into.high >= OUTSTANDING
+        if falls and out.low - max(into.high, level) >= OUTSTANDING / 2:
+            gap = distance(errors, counting[i], counting[i + 1])
+            return counting[i + 1], 2.0 ** (gap * (before.estimate - into.estimate))
+    return None
 
 
 def _ends(interval: Interval) -> tuple[float, float, float]:

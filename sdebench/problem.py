@@ -8,6 +8,7 @@ from types import MappingProxyType
 
 import numpy as np
 
+from sdebench.coordinate import STATE, Coordinate
 from sdebench.errors import BadParameter, UnknownName
 from sdebench.quadrature import normal_expectation
 from sdebench.sde import SDE, Array, NoiseKind
@@ -81,7 +82,8 @@ class Problem:
     `drift(p, t, x)`, `diffusion(p, t, x)`, `diffusion_dx(p, t, x)`, with x of shape `(paths,)`;
     `flow(p, t, x, h, noise)` is X_{t+h} given X_t = x and the functionals named in `flow_noise`,
     for every path; `law(p)` is the law of X_T. `decay` names the parameter that is θ of the
-    decayed increment, where the problem has one. `parameters` holds x0; a horizon is added.
+    decayed increment, where the problem has one. `coordinate` is where the flow is tame, and
+    `autonomous` says that nothing depends on t. `parameters` holds x0; a horizon is added.
     """
 
     name: str
@@ -96,6 +98,8 @@ class Problem:
     law: Callable[[Params], NormalLaw]
     flow_noise: tuple[str, ...] = ("dw",)
     decay: str | None = None
+    coordinate: Coordinate = STATE
+    autonomous: bool = True
     values: Params = field(default_factory=dict)
     typed: str | None = None
 

@@ -49,11 +49,16 @@ def chosen_functionals(
     given: FunctionalLike | Iterable[FunctionalLike] | None,
 ) -> tuple[Functional, ...]:
     """Return the standard functionals of weak errors and those given."""
-    if given is None:
-        given = ()
-    elif isinstance(given, str | Functional) or not isinstance(given, Iterable):
+    return distinct(() if given is None else given, STANDARD)
+
+
+def distinct(
+    given: FunctionalLike | Iterable[FunctionalLike], before: Iterable[Functional]
+) -> tuple[Functional, ...]:
+    """Return functionals after those `before`; raises `BadOption` where two share a name."""
+    if isinstance(given, str | Functional) or not isinstance(given, Iterable):
         given = [given]
-    chosen = list(STANDARD)
+    chosen = list(before)
     for functional in map(find_functional, given):
         taken = [f for f in chosen if f.name == functional.name]
         if not taken:

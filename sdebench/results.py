@@ -5,9 +5,9 @@ from typing import Any
 
 import numpy as np
 
-from sdebench.assess import Assessment, Levels
+from sdebench.assess import Assessment, Levels, Row
 from sdebench.detection import Sensitivity, limits, plateau
-from sdebench.evidence import Cost, DetectionLimit, Kind, Result, Rung, finite
+from sdebench.evidence import Cost, DetectionLimit, ErrorConstant, Kind, Result, Rung, finite
 from sdebench.integrator import Claim
 from sdebench.onestep import OneStep
 from sdebench.orders import local_order, student_quantile
@@ -22,13 +22,20 @@ def results(
     threads: int,
     sensitivity: tuple[Sensitivity, list[Sensitivity]] | None,
 ) -> list[Result]:
-    """Return the rows of a pair: contract, one-step, then what was sampled."""
+    """Return the rows of a pair: contract, one step, then what was propagated and sampled."""
     if not pair.applies:
         return [_not_applicable(pair, claim) for claim in pair.claims]
     rows = [_contract(pair)]
-    if pair.sampled and sensitivity is not None:
+    if pair.measurable and sensitivity is not None:
         rows += [_one_step(pair, claim, levels) for claim in pair.claims]
-        rows += [_sampled(pair, a, levels, threads, sensitivity) for a in pair.assessments]
+        for row in pair.rows:
+            propagated, sampled = pair.by_propagation.get(row), pair.by_sample.get(row)
+            if propagated is not None:
+                rows.append(_measured(pair, propagated, levels, threads, sensitivity))
+            if sampled is not None:
+                rows.append(_measured(pair, sampled, levels, threads, sensitivity))
+            if propagated is None and sampled is None:
+                rows.append(_unmeasured(pair, row))
     return rows
 
 
@@ -113,42 +120,45 @@ def _local_rungs(one_step: OneStep, claim: Claim) -> list[Rung]:
     ]
 
 
-def _sampled(
+def _unmeasured(pair: Pair, row: Row) -> Result:
+    cost = Cost(sample="none", seconds=0.0)
+    return _row(
+        pair,
+        row.claim.kind,
+        row.claim,
+        pair.not_propagated(row),
+        cost,
+        bears_on=row.claim.kind,
+        functional=pair.name_of(row),
+        at=row.at,
+        why_sampled=pair.why_sampled[row],
+    )
+
+
+def _measured(
     pair: Pair,
     a: Assessment,
     levels: Levels,
     threads: int,
     sensitivity: tuple[Sensitivity, list[Sensitivity]],
 ) -> Result:
-    plan, claim = pair.plan, a.row.claim
-    # A claim that one-step evidence refutes is refuted in its sampled rows too.
-    local = pair.one_step_ruling(claim, levels)
-    ruling = local if local.verdict is Verdict.REFUTED else a.ruling
-    limit = None
-    if ruling.verdict is Verdict.SUPPORTED:
-        limit = _detection_limit(a, levels, sensitivity)
-    if limit is not None:
-        ruling = replace(ruling, sentence=f"{ruling.sentence} {_limit_sentence(limit)}")
+    claim = a.row.claim
+    check = a.route == "sampled" and a.row in pair.by_propagation
+    ruling, limit = _ruling(pair, a, levels, sensitivity)
+    if check:
+        ruling = replace(ruling, sentence=f"{pair.agreement[a.row]} {ruling.sentence}")
     order, low, high = a.bounds
     index = a.row.functional
     trend = a.order.trend if a.order is not None else None
-    cost = Cost(
-        sample=pair.label,
-        seconds=pair.sample.seconds,
-        normals=pair.sample.n_paths * plan.normals_per_path,
-        paths=pair.sample.n_paths,
-        looks=pair.looks,
-        threads=threads,
-    )
     return _row(
         pair,
         claim.kind,
         claim,
         ruling,
-        cost,
+        _cost(pair, a, threads),
         bears_on=claim.kind,
-        route="sampled",
-        functional=None if index is None else plan.functionals[index].name,
+        route=a.route,
+        functional=pair.name_of(a.row),
         order=order,
         low=low,
         high=high,
@@ -157,9 +167,58 @@ def _sampled(
         extrapolated=None if trend is None else finite(trend.extrapolated.estimate),
         at=a.row.at,
         reference=None if index is None else finite(pair.references[index][0]),
-        counts=a.counts,
+        counts=a.counts and not check,
+        check=check,
+        why_sampled=pair.why_sampled.get(a.row) if a.route == "sampled" else None,
         trusted=a.trusted,
         detection_limit=limit,
+        error_constant=_error_constant(pair, a),
+    )
+
+
+def _error_constant(pair: Pair, a: Assessment) -> ErrorConstant | None:
+    found = a.constant(pair.plan.problem.horizon)
+    if found is None:
+        return None
+    order, constant = found
+    return ErrorConstant(order=order, value=constant.estimate, low=constant.low, high=constant.high)
+
+
+def _ruling(
+    pair: Pair,
+    a: Assessment,
+    levels: Levels,
+    sensitivity: tuple[Sensitivity, list[Sensitivity]],
+) -> tuple[Ruling, DetectionLimit | None]:
+    """Return the ruling on a row, and the detection limit of a supported one.
+
+    A claim that one step refutes, or a fault on some paths, is refuted in its other rows too.
+    """
+    local = pair.one_step_ruling(a.row.claim, levels)
+    if local.verdict is Verdict.REFUTED:
+        return local, None
+    seen = pair.fault_in_sample(a.row.claim)
+    if seen is not None:
+        return seen, None
+    if a.ruling.verdict is not Verdict.SUPPORTED:
+        return a.ruling, None
+    limit = _detection_limit(a, levels, sensitivity)
+    if limit is None:
+        return a.ruling, None
+    return replace(a.ruling, sentence=f"{a.ruling.sentence} {_limit_sentence(limit)}"), limit
+
+
+def _cost(pair: Pair, a: Assessment, threads: int) -> Cost:
+    if a.route == "propagated":
+        seconds = pair.propagation_seconds
+        return Cost(sample=f"{pair.label}, propagated", seconds=seconds, threads=threads)
+    return Cost(
+        sample=pair.label,
+        seconds=pair.sample.seconds,
+        normals=pair.sample.n_paths * pair.plan.normals_per_path,
+        paths=pair.sample.n_paths,
+        looks=pair.looks,
+        threads=threads,
     )
 
 
@@ -188,11 +247,12 @@ def _limit_sentence(limit: DetectionLimit) -> str:
 
 
 def _rungs(pair: Pair, a: Assessment, levels: Levels) -> list[Rung]:
-    assert pair.sample.tally is not None
-    tally, errors = pair.sample.tally, a.errors
-    marginal = student_quantile(1 - levels.confidence, errors.dof)
+    errors = a.errors
+    sampled = a.route == "sampled"
+    marginal = student_quantile(1 - levels.confidence, errors.dof) if sampled else 1.0
     values, widths = errors.values, errors.half_widths(marginal)
     absolute, absolute_widths = _mean_absolute(pair, a, levels)
+    lost = pair.sample.tally.non_finite if sampled and pair.sample.tally is not None else None
     counting = a.order.counting if a.order is not None else ()
     horizon = pair.plan.problem.horizon
     rungs = []
@@ -209,15 +269,16 @@ def _rungs(pair: Pair, a: Assessment, levels: Levels) -> list[Rung]:
                     None if absolute_widths is None else finite(float(absolute_widths[r]))
                 ),
                 local_order=_local_order(a, r),
-                largest_share=finite(float(a.shares[r])),
-                non_finite=int(tally.non_finite[r]),
+                largest_share=None if a.shares is None else finite(float(a.shares[r])),
+                non_finite=0 if lost is None else int(lost[r]),
+                dropped=a.dropped[r] if a.dropped else None,
             )
         )
     return rungs
 
 
 def _mean_absolute(pair: Pair, a: Assessment, levels: Levels) -> tuple[Array | None, Array | None]:
-    if a.row.at != "horizon":
+    if a.row.at != "horizon" or a.route != "sampled":
         return None, None
     assert pair.sample.tally is not None
     estimate = pair.sample.tally.moments.estimate(list(pair.plan.rows.absolute))

@@ -35,7 +35,10 @@ WINDOW = 16  # blocks in flight, so that memory does not grow with the number of
 
 @dataclass(frozen=True)
 class Plan:
-    """What is sampled: a scheme on a problem, over a ladder, from a seed."""
+    """What is sampled: a scheme on a problem, over a ladder, from a seed.
+
+    `drawn_for` are functionals that another scheme on the same paths steps by.
+    """
 
     scheme: Scheme
     problem: Problem
@@ -43,11 +46,12 @@ class Plan:
     functionals: tuple[Functional, ...]
     seed: int
     grid_maximum: bool = False
+    drawn_for: tuple[str, ...] = ()
 
     @cached_property
     def names(self) -> tuple[str, ...]:
         """The Wiener functionals that are drawn."""
-        return in_order((*self.scheme.noise, *self.problem.flow_noise))
+        return in_order((*self.scheme.noise, *self.problem.flow_noise, *self.drawn_for))
 
     @cached_property
     def rows(self) -> Rows:
@@ -139,6 +143,10 @@ class Walk:
 
     def block(self, index: int) -> Tally:
         """Return what block `index` adds up to."""
+        return self.gathered(index).of([rung.x for rung in self.rungs])
+
+    def gathered(self, index: int) -> "Gathered":
+        """Return the batch means of block `index`."""
         plan = self.plan
         seeds = [
             np.random.SeedSequence(
@@ -151,7 +159,7 @@ class Walk:
         scheme = plan.scheme
         with blamed(f"Scheme '{scheme.label}'", scheme.step, "while sampling"):
             whole = self._join(0)
-        return self._tally(whole)
+        return self._gather(whole)
 
     def _join(self, rung: int) -> Stack:
         """Walk as many steps of `rung` as make one of the rung before, and return that one."""
@@ -170,7 +178,7 @@ class Walk:
         self.rungs[rung].advance(self.plan, self.sde, noise, self.scratch)
         return noise
 
-    def _tally(self, whole: Stack) -> Tally:
+    def _gather(self, whole: Stack) -> "Gathered":
         plan, problem, rows = self.plan, self.plan.problem, self.plan.rows
         start = np.full(BLOCK, problem.start)
         end = problem.exact_step(0.0, start, problem.horizon, Noise(**whole))
@@ -178,14 +186,14 @@ class Walk:
         worst = [rung.worst for rung in self.rungs]
         quadratic = [rung.quadratic for rung in self.rungs]
         functions = [_guarded(f) for f in plan.functionals]
-        tally = Gathered(rows.count, rows.n_measured)
+        gathered = Gathered(rows.count, rows.n_measured)
         for row in rows.error_rows(states, worst, end):
-            tally.add(row)
+            gathered.add(row)
         for row in rows.weak_rows(states, end, functions):
-            tally.add(row)
+            gathered.add(row)
         for row in rows.control_rows(whole["dw"], quadratic, problem.horizon, plan.ladder.steps):
-            tally.add(row)
-        return tally.of(states)
+            gathered.add(row)
+        return gathered
 
 
 class Gathered:

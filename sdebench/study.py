@@ -7,6 +7,7 @@ import time
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
+from typing import Literal
 
 import numpy as np
 
@@ -14,11 +15,12 @@ from sdebench import discovery, ladder
 from sdebench.assess import Levels
 from sdebench.claims import claim_results
 from sdebench.detection import sensitivities
+from sdebench.errors import BadOption
 from sdebench.evidence import Evidence, Provenance
 from sdebench.functional import STANDARD
 from sdebench.integrator import Scheme
 from sdebench.ladder import Ladder
-from sdebench.pair import Pair
+from sdebench.pair import Pair, Routes
 from sdebench.request import (
     FunctionalLike,
     ProblemLike,
@@ -34,6 +36,9 @@ from sdebench.verdict import overall
 
 MAX_LOOKS = 7  # two million paths on the last look
 DEFAULT_SEED = 1
+
+Route = Literal["propagated", "sampled"]
+ROUTES = ("propagated", "sampled")
 
 Progress = Callable[[str, int, int], None]
 
@@ -69,6 +74,7 @@ def measure(
     steps: Iterable[int] | None = None,
     functionals: FunctionalLike | Iterable[FunctionalLike] | None = None,
     grid_maximum: bool = False,
+    route: Route | None = None,
     seed: int = DEFAULT_SEED,
     confidence: float = 0.95,
     tolerance: float = 0.1,
@@ -81,9 +87,11 @@ def measure(
 
     `schemes`: registered names, `file.py:function`, or decorated functions; one or several, every
     registered one if None. `on`: problems by name (`gbm:mu=1.5,sigma=0.5`) or as objects; every
-    one that a scheme applies to if None. `steps`: rungs of the ladder (default 4 … 64), each a
-    multiple of the one before. `functionals`: weak functionals beside mean, second moment and
-    cosine. `grid_maximum`: also the largest strong error over each rung's grid points.
+    one that a scheme applies to if None. `steps`: rungs of the ladder, each a multiple of the one
+    before (default 4 … 4096 where errors are propagated, 4 … 64 where they are sampled).
+    `functionals`: weak functionals beside mean, second moment and cosine. `grid_maximum`: also the
+    largest strong error over each rung's grid points. `route`: "propagated" or "sampled" alone;
+    None propagates what can be, checks it by a modest sample, and samples the rest.
     `confidence` in (0, 1) is of the intervals; `tolerance` (in orders) of the verdicts. `budget`
     in seconds, or `looks`, limit the effort; `threads` is the number of threads (default: the
     processors at hand), of which the result does not depend. `progress(what, done, total)` is
@@ -106,15 +114,21 @@ def measure(
         Plan(scheme, problem, rungs, chosen, seed, grid_maximum)
         for scheme, problem in chosen_pairs(schemes, on)
     ]
-    pairs = [Pair(plan) for plan in plans]
+    if route not in (None, "propagated", "sampled"):
+        raise BadOption("route", repr(route), "it is 'propagated', 'sampled', or left out for both")
+    propagated = ladder.PROPAGATED if steps is None else rungs
+    routes = Routes(route != "sampled", route != "propagated", propagated)
+    pairs = [Pair(plan, routes) for plan in plans]
     levels = Levels(confidence, tolerance, sum(len(p.rows) for p in pairs if p.applies))
     effort = Effort(looks, budget)
     _run(pairs, levels, effort, n_threads, progress or _silent)
     sampled = [pair for pair in pairs if pair.sampled]
+    n_route_checks = sum(pair.n_route_checks for pair in sampled)
     for pair in sampled:
-        pair.check(len(sampled) * len(chosen))
+        pair.check(len(sampled) * len(chosen), n_route_checks)
     claims = [claim for pair in pairs for claim in claim_results(pair, levels)]
-    found = {p.plan.problem.label: sensitivities(p.plan.problem, chosen) for p in sampled}
+    problems = {pair.plan.problem.label: pair.plan.problem for pair in pairs if pair.measurable}
+    found = {label: sensitivities(problem, chosen) for label, problem in problems.items()}
     rows = [
         row
         for pair in pairs
@@ -126,11 +140,21 @@ def measure(
         provenance=Provenance(
             **_versions(),
             created=datetime.now(UTC).isoformat(timespec="seconds"),
-            command=_command(plans, schemes is None, on is None, levels, effort, rounds),
+            command=_command(
+                plans, schemes is None, on is None, steps is None, route, levels, effort, rounds
+            ),
             seed=seed,
             confidence=confidence,
             tolerance=tolerance,
-            steps=list(rungs.steps),
+            steps=sorted(
+                {
+                    n
+                    for row in rows
+                    for rung in row.rungs
+                    if row.route in ROUTES
+                    for n in [rung.steps]
+                }
+            ),
             looks=rounds,
             budget=budget,
             threads=n_threads,
@@ -159,8 +183,9 @@ def _run(
     begin = time.monotonic()
     applying = [pair for pair in pairs if pair.applies]
     for done, pair in enumerate(applying):
-        progress(f"{pair.label}: contract, one step", done, len(applying))
+        progress(f"{pair.label}: contract, one step, propagation", done, len(applying))
         pair.examine(levels.tolerance)
+        pair.propagate(levels, threads)
     sampled = [pair for pair in applying if pair.sampled]
     while True:
         seconds = time.monotonic() - begin
@@ -196,6 +221,8 @@ def _command(
     plans: Sequence[Plan],
     every_scheme: bool,
     every_problem: bool,
+    own_steps: bool,
+    route: Route | None,
     levels: Levels,
     effort: Effort,
     rounds: int,
@@ -209,11 +236,12 @@ def _command(
             words += ["--on", label]
     plan = plans[0] if plans else None
     if plan is not None:
-        if plan.ladder != ladder.DEFAULT:
+        if not own_steps:
             words += ["--steps", ",".join(map(str, plan.ladder.steps))]
         for functional in plan.functionals[len(STANDARD) :]:
             words += ["--functional", functional.name]
         words += ["--grid-maximum"] if plan.grid_maximum else []
+        words += ["--route", route] if route is not None else []
         words += ["--seed", str(plan.seed)]
     words += ["--confidence", f"{levels.confidence!r}", "--tolerance", f"{levels.tolerance!r}"]
     if effort.looks is not None or effort.budget is not None:

@@ -7,7 +7,8 @@ finest counting pair of rungs and q_before the one above it:
                has jumped up by half an order or more (as before a change of sign)
     refuted    when at least four rungs count, the finest of 32 steps or more, and the upper ends
                of q and of q + 4 max(0, q - q_before) are below p - δ (an order that still rises
-               towards it belongs to a ladder that is too coarse)
+               towards it belongs to a ladder that is too coarse); or when the error of one rung
+               stands out from those about it (`Order.outlier`)
     undecided  otherwise
 """
 
@@ -60,11 +61,15 @@ def overall(verdicts: Sequence[Verdict]) -> Verdict:
 
 @dataclass(frozen=True)
 class Ruling:
-    """A verdict, its sentence, and whether more paths on the same rungs could change it."""
+    """A verdict, its sentence, and whether more paths on the same rungs could change it.
+
+    `lasting` says that a fault was seen on a rung that finer rungs do not undo.
+    """
 
     verdict: Verdict
     sentence: str
     more_paths_help: bool = False
+    lasting: bool = False
 
 
 def judge(
@@ -73,17 +78,25 @@ def judge(
     counting: Sequence[int],
     claimed: float,
     tolerance: float,
-    look: int,
+    look: int | None,
     unresolved: bool,
 ) -> Ruling:
     """Return the ruling on a claim of order `claimed` from trusted errors and their order.
 
-    `look` is the number of looks so far, each of which doubled the paths; `unresolved` says
-    whether a rung's error is still not told from zero.
+    `look` is the number of looks so far, each of which doubled the paths, or None where errors
+    are not sampled; `unresolved` says whether a rung's error is still not told from zero.
     """
     needed = claimed - tolerance
     if order is None or order.trend is None:
         return _too_few(errors, counting, unresolved)
+    if order.outlier is not None:
+        rung, factor = order.outlier
+        return Ruling(
+            Verdict.REFUTED,
+            f"With {errors.steps[rung]} steps the error is {factor:.3g} times what the rungs about "
+            "it lead to: the step does something else at that step size.",
+            lasting=True,
+        )
     trend = order.trend
     if trend.curbed.low > needed and trend.moved.low > JUMP:
         return Ruling(
@@ -113,15 +126,21 @@ def seen(errors: Errors, order: Order) -> str:
 
 
 def shown(interval: Interval) -> str:
-    """Return an interval as '0.9980 (0.9897 to 1.0063)', to a tenth of its half-width."""
+    """Return an interval as '0.9980 (0.9897 to 1.0063)', to a tenth of its half-width.
+
+    The value alone where its bounds round to it.
+    """
     width = min(interval.high - interval.estimate, interval.estimate - interval.low)
-    digits = 3 if not 0 < width < math.inf else min(max(1 - math.floor(math.log10(width)), 1), 4)
+    digits = 3 if not 0 < width < math.inf else min(max(1 - math.floor(math.log10(width)), 1), 5)
     high = f"to {interval.high:.{digits}f}" if interval.high < math.inf else "upward"
     low = f"{interval.low:.{digits}f}" if interval.low > -math.inf else "no lower bound"
-    return f"{interval.estimate:.{digits}f} ({low} {high})"
+    value = f"{interval.estimate:.{digits}f}"
+    return value if (low, high) == (value, f"to {value}") else f"{value} ({low} {high})"
 
 
-def _unsettled(errors: Errors, order: Order, trend: Trend, needed: float, look: int) -> Ruling:
+def _unsettled(
+    errors: Errors, order: Order, trend: Trend, needed: float, look: int | None
+) -> Ruling:
     """The order is neither clearly high enough nor clearly too low: noise, or too coarse rungs."""
     moved = trend.moved.estimate
     if order.local.low > needed and trend.curbed.estimate <= needed:
@@ -134,18 +153,20 @@ def _unsettled(errors: Errors, order: Order, trend: Trend, needed: float, look: 
             f"{seen(errors, order)}; as it falls or rises it may lead from "
             f"{trend.curbed.low:.2f} to {trend.lifted.high:.2f}, too wide to tell from {needed:g}; "
             f"{_more_paths(trend.curbed, needed, look)}.",
-            more_paths_help=True,
+            more_paths_help=look is not None,
         )
     return Ruling(
         Verdict.UNDECIDED,
         f"{seen(errors, order)}, but {way} from the pair before: the rungs are too coarse to "
         f"tell; try --steps {finer(errors.steps)}.",
-        more_paths_help=open_ended,
+        more_paths_help=open_ended and look is not None,
     )
 
 
-def _more_paths(curbed: Interval, needed: float, look: int) -> str:
+def _more_paths(curbed: Interval, needed: float, look: int | None) -> str:
     """Say how many looks would tell, since a width shrinks with the square root of the paths."""
+    if look is None:
+        return "other rungs might"
     gap, reach = curbed.estimate - needed, curbed.estimate - curbed.low
     if not 0 < gap < reach < math.inf:
         return f"more paths might, as with --looks {look + 2} (each look doubles them)"

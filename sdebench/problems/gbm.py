@@ -15,7 +15,9 @@ import math
 
 import numpy as np
 
-from sdebench import Array, Noise, NormalLaw, Parameter, Params, Problem
+from sdebench import Array, Coordinate, Noise, NormalLaw, Parameter, Params, Problem
+
+logarithm = Coordinate(to=np.log, back=np.exp, slope=lambda x: 1 / x)
 
 
 def drift(p: Params, t: float, x: Array) -> Array:
@@ -36,7 +38,7 @@ def flow(p: Params, t: float, x: Array, h: float, noise: Noise) -> Array:
 
 def law(p: Params) -> NormalLaw:
     mean = math.log(p["x0"]) + (p["mu"] - p["sigma"] ** 2 / 2) * p["horizon"]
-    return NormalLaw(mean, p["sigma"] * math.sqrt(p["horizon"]), np.exp)
+    return NormalLaw(mean, p["sigma"] * math.sqrt(p["horizon"]), logarithm.back)
 
 
 gbm = Problem(
@@ -54,4 +56,5 @@ gbm = Problem(
     diffusion_dx=diffusion_dx,
     flow=flow,
     law=law,
+    coordinate=logarithm,
 )

@@ -52,4 +52,5 @@ ramped_noise = Problem(
     diffusion_dx=diffusion_dx,
     flow=flow,
     law=law,
+    autonomous=False,
 )

@@ -37,6 +37,10 @@ def main() -> None:
     speed_up("euler-maruyama")
     speed_up("milstein")
     controls()
+    for name in ("euler-maruyama", "milstein"):
+        for problem in ("gbm", "arctan"):
+            propagation(name, problem)
+    default_run()
     memory()
     start_up()
 
@@ -84,6 +88,64 @@ def controls() -> None:
         plain = taken.tally.moments.estimate(finest).covariance[0, 0]
         adjusted = taken.tally.moments.adjusted(finest, list(rows.controls)).covariance[0, 0]
         print(f"{name} on gbm, 64 steps: paths saved by the controls: {plain / adjusted:.0f} times")
+
+
+def propagation(name: str, on: str) -> None:
+    """Strong and weak errors to 4096 steps, propagated, over plain Monte Carlo for one weak order.
+
+    Plain Monte Carlo estimates E X^h_T with independent paths on each of 4 … 64 steps, and compares
+    with the exact mean. Its time is that for an interval of the local order at 32 and 64 steps as
+    narrow as the propagated one, from the width that a run of affordable size has: a width shrinks
+    with the square root of the paths.
+    """
+    ladder = (4, 8, 16, 32, 64, 128, 256, 512, 1024, 2048, 4096)
+    options = {"on": on, "threads": 1}
+    ratios = []
+    for _ in range(3):
+        propagated = seconds(lambda: sb.measure(name, route="propagated", steps=ladder, **options))
+        evidence = sb.measure(name, route="propagated", steps=DEFAULT.steps, **options)
+        row = next(r for r in evidence.results if r.functional == "mean")
+        wanted = row.high - row.low
+        found: list[float] = []
+        plain = seconds(lambda found=found: found.extend(plain_width(name, on)))
+        ratios.append(propagated / (plain * (found[0] / wanted) ** 2))
+    what = (
+        f"{name} on {on}: propagated, all to 4096 steps / plain Monte Carlo, one weak order to 64"
+    )
+    print(f"{what}: {statistics.median(ratios):.1e}   (aim: at most 1e-3)")
+
+
+def plain_width(name: str, on: str) -> list[float]:
+    """Return the width of the 95% interval of the weak order of the mean at 32 and 64 steps."""
+    scheme, problem = find_scheme(name), find_problem(on)
+    law = problem.law(problem.params)
+    exact, _ = law.expectation(lambda x: x)
+    rng = np.random.Generator(np.random.SFC64(1))
+    n_paths = 2**18
+    errors, spreads = [], []
+    for steps in DEFAULT.steps:
+        h, x = problem.horizon / steps, np.full(n_paths, problem.start)
+        for k in range(steps):
+            noise = sb.Noise(dw=rng.standard_normal(n_paths) * h**0.5)
+            x = scheme(problem.sde, k * h, x, h, noise)
+        errors.append(float(x.mean()) - exact)
+        spreads.append(float(x.std()) / n_paths**0.5)
+    # The population errors are those of a power law from the coarsest rung, whose error is seen.
+    sizes = [abs(errors[0]) * DEFAULT.steps[0] / n for n in DEFAULT.steps[-2:]]
+    relative = [s / size for s, size in zip(spreads[-2:], sizes, strict=True)]
+    return [2 * 1.96 * float(np.hypot(*relative)) / float(np.log(2))]
+
+
+def default_run() -> None:
+    """All schemes on all problems by default, over sampling alone on the same and on three."""
+    three = ["gbm", "ou", "ramped-noise"]
+    same, before = [], []
+    for _ in range(3):
+        whole = seconds(lambda: sb.measure())
+        same.append(whole / seconds(lambda: sb.measure(route="sampled")))
+        before.append(whole / seconds(lambda: sb.measure(on=three, route="sampled")))
+    show("default run / the same by sampling alone", same, "1")
+    show("default run / sampling alone on gbm, ou, ramped-noise", before, "15 pairs to 7: 2.1")
 
 
 def memory() -> None:

@@ -1,4 +1,4 @@
-"""What must hold for every registered problem: its flow, its law and its coefficients agree."""
+"""What must hold for every registered problem: flow, law, coefficients and coordinate agree."""
 
 import re
 import sys
@@ -10,6 +10,7 @@ import sdebench as sb
 from sdebench.admission import check_problem
 from sdebench.expansion import Setting, expand, limit
 from sdebench.functional import STANDARD
+from sdebench.grid import reach
 from sdebench.probe import parameter_sets, states, time_scale, times
 from sdebench.wiener import StepLaw, concatenate, gauss_hermite
 from tests.tolerance import round_off
@@ -130,6 +131,82 @@ def test_the_coefficients_are_the_leading_terms_of_the_flow(problem, which, term
         power = (1.0, 0.5, 1.0)[j]
         found, doubt = limit(e.needed[..., j], e.floors / e.h[:, None] ** power)
         assert np.all(np.abs(found - coefficients[term]) <= doubt)
+
+
+def reached(p: sb.Problem) -> np.ndarray:
+    """Return places in the coordinate up to six standard deviations of the end, and the start."""
+    low, start, high = reach(p, 6.0)
+    return np.linspace(min(low, start), max(high, start), 201)
+
+
+def test_the_way_back_inverts_the_coordinate(problem):
+    """An ulp of u is as much of x as the slope says, and the other way about.
+
+    It would catch the inverse of another branch, and one that is right near the start alone.
+    """
+    for p in parameter_sets(problem):
+        c, u = p.coordinate, reached(p)
+        x = c.back(u)
+        slope = np.abs(c.slope(x))
+        ulp = round_off(1.0, OPERATIONS)
+        assert np.all(np.abs(c.to(x) - u) <= ulp * (np.abs(u) + np.abs(x) * slope))
+        assert np.all(np.abs(c.back(c.to(x)) - x) <= ulp * (np.abs(x) + np.abs(u) / slope))
+
+
+def test_the_slope_is_the_derivative_of_the_coordinate(problem):
+    """By central differences at two distances, whose change bounds their own error."""
+    for p in parameter_sets(problem):
+        c, x = p.coordinate, states(p)
+        near = float(np.abs(x).max()) * float(np.finfo(float).eps) ** (1 / 3)
+
+        def slope(distance, c=c, x=x):
+            return (c.to(x + distance) - c.to(x - distance)) / (2 * distance)
+
+        # A value is known to some ulp of its own and, by the slope, of the state.
+        lost = round_off(1.0, OPERATIONS) * (np.abs(c.to(x)) + np.abs(c.slope(x) * x)) / near
+        allowed = np.abs(slope(near) - slope(2 * near)) + lost
+        assert np.all(np.abs(c.slope(x) - slope(near)) <= allowed)
+
+
+def test_the_coordinate_increases(problem):
+    for p in parameter_sets(problem):
+        x = p.coordinate.back(reached(p))
+        assert np.all(np.diff(x) > 0)
+        assert np.all(np.diff(p.coordinate.to(x)) > 0)
+        assert np.all(p.coordinate.slope(x) > 0)
+
+
+def test_the_coordinate_keeps_the_shape_of_the_state_and_leaves_it_alone(problem):
+    x = states(problem).reshape(2, 2)
+    kept = x.copy()
+    c = problem.coordinate
+    for values in (c.to(x), c.slope(x), c.back(c.to(x))):
+        assert (values.shape, values.dtype) == ((2, 2), np.float64)
+    assert np.array_equal(x, kept)
+
+
+def test_the_law_is_normal_in_the_coordinate_where_nothing_depends_on_time(problem):
+    """Its transform is the way back, within six standard deviations."""
+    if not problem.autonomous:
+        pytest.skip("the coordinate of a problem that depends on time is of no use")
+    for p in parameter_sets(problem):
+        law = p.law(p.params)
+        g = law.mean + np.linspace(-6, 6, 201) * law.sd
+        x = p.coordinate.back(g)
+        assert np.all(np.abs(law.transform(g) - x) <= round_off(1.0, OPERATIONS) * np.abs(x))
+
+
+def test_a_problem_is_autonomous_if_and_only_if_nothing_in_it_depends_on_time(problem):
+    """Drift, diffusion and flow at four times of the horizon beside time 0, to the bit."""
+    depends = False
+    for i, p in enumerate(parameter_sets(problem)):
+        x, h = states(p), 0.01 * p.horizon
+        noise = sb.Noise(**drawn(p, h, len(x), 5 + i))
+        functions = [p.sde.drift, p.sde.diffusion, p.sde.diffusion_dx]
+        functions.append(lambda t, x, p=p, h=h, noise=noise: p.exact_step(t, x, h, noise))
+        for t in (*times(p, i), 0.5 * p.horizon, p.horizon - h):
+            depends |= any(not np.array_equal(f(t, x), f(0.0, x)) for f in functions)
+    assert problem.autonomous == (not depends)
 
 
 def test_the_noise_is_of_the_kind_that_is_said(problem):

@@ -8,6 +8,7 @@ import jsonschema
 import pytest
 
 import sdebench as sb
+from tests.known.gbm_errors import gbm_errors
 
 QUICK = ("--looks", "1", "--threads", "1", "--steps", "4,8,16")
 
@@ -62,11 +63,11 @@ def test_the_file_names_its_format(saved):
 
 def test_every_row_has_the_published_fields(saved):
     evidence = saved("milstein", "--on", "gbm", *QUICK)
-    assert [set(row) >= ROW for row in evidence["results"]] == [True] * 7
+    assert [set(row) >= ROW for row in evidence["results"]] == [True] * 11
 
 
 def test_a_pair_has_contract_one_step_strong_and_weak_rows(saved):
-    rows = saved("milstein", "--on", "gbm", *QUICK)["results"]
+    rows = saved("milstein", "--on", "gbm", *QUICK, "--route", "sampled")["results"]
     assert [(row["kind"], row["route"], row["functional"]) for row in rows] == [
         ("contract", None, None),
         ("one-step", "quadrature", None),
@@ -78,6 +79,49 @@ def test_a_pair_has_contract_one_step_strong_and_weak_rows(saved):
     ]
 
 
+def test_every_propagated_row_is_followed_by_its_check(saved):
+    rows = saved("milstein", "--on", "gbm", *QUICK)["results"][3:]
+    assert [(r["functional"], r["route"], r["check"], r["counts"]) for r in rows] == [
+        (functional, route, route == "sampled", route == "propagated")
+        for functional in (None, "mean", "second-moment", "cos")
+        for route in ("propagated", "sampled")
+    ]
+
+
+def test_a_row_that_had_to_be_sampled_says_why(saved):
+    rows = saved("milstein", "--on", "ramped-noise", *QUICK)["results"][3:]
+    assert [(r["route"], r["check"], r["why_sampled"]) for r in rows] == [
+        ("sampled", False, "ramped-noise depends on time")
+    ] * 4
+
+
+@pytest.mark.parametrize("route", ["propagated", "sampled"])
+def test_a_row_of_a_route_that_was_asked_for_gives_no_reason(saved, route):
+    rows = saved("milstein", "--on", "gbm", *QUICK, "--route", route)["results"][3:]
+    assert {(r["route"], r["check"], r["why_sampled"]) for r in rows} == {(route, False, None)}
+
+
+def test_a_propagated_row_costs_no_paths_and_a_check_does(saved):
+    rows = saved("milstein", "--on", "gbm", *QUICK)["results"][3:]
+    costs = {r["route"]: r["cost"] for r in rows}
+    assert (costs["propagated"]["paths"], costs["propagated"]["normals"]) == (0, 0)
+    assert (costs["sampled"]["paths"], costs["sampled"]["normals"]) == (32768, 16 * 32768)
+    assert costs["propagated"]["seconds"] > 0
+
+
+def test_a_propagated_row_bounds_the_limit_of_error_over_step_size(saved):
+    """Against the closed form at 10^9 steps, where error / h is within some 10^-9 of its limit."""
+    rows = saved("milstein", "--on", "gbm", "--route", "propagated", "--threads", "1")["results"]
+    (strong,) = [row for row in rows if row["kind"] == "strong"]
+    p = sb.problem("gbm").params
+    steps = 10**9
+    limit = float(gbm_errors("milstein", steps, **p).mean_square.sqrt()) * steps
+    constant = strong["error_constant"]
+    assert constant["order"] == 1.0
+    assert constant["low"] < limit < constant["high"]
+    assert constant["low"] < constant["value"] < constant["high"]
+
+
 def test_scheme_and_problem_are_named_as_typed(saved, traced):
     evidence = saved(traced, "--on", "gbm:sigma=0.20,mu=.3", *QUICK)
     named = {(row["scheme"], row["problem"]) for row in evidence["results"]}
@@ -86,17 +130,19 @@ def test_scheme_and_problem_are_named_as_typed(saved, traced):
 
 def test_rungs_hold_steps_step_size_error_and_uncertainty(saved):
     evidence = saved("milstein", "--on", "gbm:horizon=2", *QUICK)
-    (strong,) = [row for row in evidence["results"] if row["kind"] == "strong"]
-    assert [(rung["steps"], rung["h"]) for rung in strong["rungs"]] == [
-        (4, 0.5),
-        (8, 0.25),
-        (16, 0.125),
-    ]
-    assert all(0 < rung["uncertainty"] < rung["error"] for rung in strong["rungs"])
+    both = [row for row in evidence["results"] if row["kind"] == "strong"]
+    assert [row["route"] for row in both] == ["propagated", "sampled"]
+    for strong in both:
+        assert [(rung["steps"], rung["h"]) for rung in strong["rungs"]] == [
+            (4, 0.5),
+            (8, 0.25),
+            (16, 0.125),
+        ]
+        assert all(0 < rung["uncertainty"] < rung["error"] for rung in strong["rungs"])
 
 
 def test_a_strong_rung_holds_the_mean_absolute_error_below_the_root_mean_square(saved):
-    evidence = saved("milstein", "--on", "gbm", *QUICK)
+    evidence = saved("milstein", "--on", "gbm", *QUICK, "--route", "sampled")
     (strong,) = [row for row in evidence["results"] if row["kind"] == "strong"]
     assert all(0 < rung["mean_absolute"] < rung["error"] for rung in strong["rungs"])
 
@@ -118,9 +164,9 @@ def test_exact_rows_have_no_order(saved):
     orders = [
         (row["exact"], row["order"], row["low"], row["high"])
         for row in evidence["results"]
-        if row["route"] == "sampled"
+        if row["route"] in ("propagated", "sampled")
     ]
-    assert orders == [(True, None, None, None)] * 4
+    assert orders == [(True, None, None, None)] * 8
 
 
 def test_rows_of_one_sample_carry_the_same_cost(saved):
@@ -135,15 +181,22 @@ def test_rows_of_one_sample_carry_the_same_cost(saved):
 
 def test_the_grid_maximum_is_a_strong_row_of_its_own(saved):
     evidence = saved("milstein", "--on", "gbm", "--grid-maximum", *QUICK)
-    places = [row["at"] for row in evidence["results"] if row["kind"] == "strong"]
-    assert places == ["horizon", "grid"]
+    strong = [row for row in evidence["results"] if row["kind"] == "strong"]
+    assert [(row["at"], row["route"], row["counts"]) for row in strong] == [
+        ("horizon", "propagated", True),
+        ("horizon", "sampled", False),
+        ("grid", "sampled", True),
+    ]
+    assert strong[-1]["why_sampled"] == "the largest error over a grid is no function of its end"
 
 
 def test_a_functional_of_the_user_is_a_weak_row_of_its_own(saved, write):
     write("def cube(x):\n    return x**3\n", "fn.py")
     evidence = saved("milstein", "--on", "gbm", "--functional", "fn.py:cube", *QUICK)
-    functionals = [row["functional"] for row in evidence["results"] if row["kind"] == "weak"]
-    assert functionals == ["mean", "second-moment", "cos", "fn.py:cube"]
+    weak = [row for row in evidence["results"] if row["kind"] == "weak"]
+    for check in (False, True):
+        functionals = [row["functional"] for row in weak if row["check"] is check]
+        assert functionals == ["mean", "second-moment", "cos", "fn.py:cube"]
 
 
 @pytest.mark.parametrize(
@@ -153,10 +206,21 @@ def test_a_functional_of_the_user_is_a_weak_row_of_its_own(saved, write):
         ("milstein", "--on", "gbm:mu=2,sigma=1"),
         ("exact-ou", "--on", "ou"),
         ("exact-ou", "--on", "gbm"),
+        ("milstein", "--on", "ramped-noise"),
+        ("milstein", "--on", "ramped-noise", "--route", "propagated"),
         ("my.py:idle", "--on", "ou"),
         ("my.py:bold", "--on", "gbm", "--grid-maximum"),
     ],
-    ids=["inexact", "heavy-tail", "exact", "not-applicable", "broken-contract", "refuted"],
+    ids=[
+        "inexact",
+        "heavy-tail",
+        "exact",
+        "not-applicable",
+        "sampled",
+        "not-propagated",
+        "broken-contract",
+        "refuted",
+    ],
 )
 def test_every_kind_of_evidence_is_valid_under_the_published_schema(
     saved, write, published_schema, words

@@ -11,9 +11,9 @@ ONCE = ("--looks", "1", "--threads", "1")
 def raised(typed, write):
     """Return a function that measures a step with this body and returns what was told."""
 
-    def run(body: str, parameters: str = "sde, t, x, h, noise") -> str:
+    def run(body: str, *options: str, parameters: str = "sde, t, x, h, noise") -> str:
         write(f"@scheme(strong=0.5)\ndef step({parameters}):\n    {body}\n")
-        outcome = typed("measure", "my.py:step", "--on", "gbm", *ONCE)
+        outcome = typed("measure", "my.py:step", "--on", "gbm", *ONCE, *options)
         assert (outcome.code, outcome.out) == (2, "")
         assert outcome.err.startswith("sdebench: ")
         return outcome.err
@@ -38,15 +38,40 @@ def test_an_error_inside_the_given_coefficients_shows_only_the_users_frames(rais
     assert re.findall(r'File "(.*)", line', told) == [str(folder / "my.py")]
 
 
-def test_a_step_that_raises_only_while_sampling_shows_only_the_users_frames(raised, folder):
-    told = raised("return euler(sde, t, x, h, noise) if (t, h) != (0.75, 0.25) else x / (1 // 0)")
+LATE = "return euler(sde, t, x, h, noise) if (t, h) != (0.75, 0.25) else x / (1 // 0)"
+LATE_OF_8 = "return euler(sde, t, x, h, noise) if (t, h) != (0.75, 0.125) else x / (1 // 0)"
+MANY = "return x / (1 // 0) if 1000 < len(x) < 8000 else euler(sde, t, x, h, noise)"
+
+
+@pytest.mark.parametrize(
+    ("body", "options"),
+    [(LATE, ("--route", "sampled")), (LATE_OF_8, ())],
+    ids=["sampled alone", "in a check"],
+)
+def test_a_step_that_raises_only_while_sampling_shows_only_the_users_frames(
+    raised, folder, body, options
+):
+    told = raised(body, *options)
     assert "while sampling" in told
+    assert re.findall(r'File "(.*)", line', told) == [str(folder / "my.py")]
+
+
+@pytest.mark.parametrize(
+    ("body", "when"),
+    [(LATE, "when it was tried at other times"), (MANY, "while its errors were propagated")],
+    ids=["late", "for as many states as nodes"],
+)
+def test_a_step_that_raises_only_while_propagating_shows_only_the_users_frames(
+    raised, folder, body, when
+):
+    told = raised(body, "--route", "propagated")
+    assert when in told
     assert re.findall(r'File "(.*)", line', told) == [str(folder / "my.py")]
 
 
 @pytest.mark.parametrize("parameters", ["sde, t, x, h", "x", ""], ids=["four", "one", "none"])
 def test_a_step_of_another_signature_is_told_without_our_traceback(raised, parameters):
-    told = raised("return x", parameters)
+    told = raised("return x", parameters=parameters)
     assert f"'my.py': 'step' takes ({parameters}): a step is f(sde, t, x, h, noise)" in told
     assert "Traceback" not in told
 

@@ -25,6 +25,7 @@ def rows(
     """
     evidence = sb.measure(
         scheme,
+        route="sampled",
         on=problem,
         steps=steps,
         looks=looks,

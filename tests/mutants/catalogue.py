@@ -1,7 +1,7 @@
 """What a mutant is: an integrator wrong on purpose, where it shows, and what must refute it."""
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import sdebench as sb
 from sdebench.contract import Law
@@ -10,7 +10,11 @@ from sdebench.integrator import Step
 
 ONE_STEP = "one-step"
 SAMPLED = "sampled"
-SAMPLED_ORDER = "is claimed (tolerance"  # a sampled order refutes in these words
+PROPAGATED = "propagated"
+LOW_ORDER = "is claimed (tolerance"  # an order that is too low refutes in these words
+OUTLIER = "times what the rungs about it lead to"  # and one rung that stands out in these
+# One step and the contract decide without errors of whole paths: these cost the least.
+LEAST = {"route": "sampled", "steps": (1, 2, 4)}
 
 
 @dataclass(frozen=True)
@@ -18,8 +22,9 @@ class Mutant:
     """A wrong integrator with the claims it must lose.
 
     `on` is a problem that shows its fault. `by` is the evidence that must refute it: a law of the
-    contract, the terms of one step, or a sampled order. `says` holds a phrase for each claim that
-    this evidence refutes; no other claim may be refuted by it.
+    contract, the terms of one step, sampled errors or propagated ones. `says` holds a phrase for
+    each claim that this evidence refutes; no other claim may be refuted by it. `options` say how
+    it is measured, where that is not by default.
     """
 
     family: str
@@ -27,6 +32,7 @@ class Mutant:
     on: str
     by: Law | str
     says: Mapping[str, str]
+    options: Mapping[str, object] = field(default_factory=dict)
 
     @property
     def label(self) -> str:
@@ -46,6 +52,7 @@ class Family:
         on: str,
         by: Law | str,
         says: str | Mapping[str, str],
+        options: Mapping[str, object] | None = None,
         **claims: object,
     ) -> Callable[[Step], sb.Scheme]:
         """Return a decorator; a plain `says` is the phrase for each claim, strong 1 and weak 1."""
@@ -55,7 +62,7 @@ class Family:
 
         def decorate(step: Step) -> sb.Scheme:
             made = sb.scheme(**given)(step)
-            self.mutants.append(Mutant(self.name, made, on, by, phrases))
+            self.mutants.append(Mutant(self.name, made, on, by, phrases, options or {}))
             return made
 
         return decorate
@@ -69,9 +76,12 @@ def measured(scheme: sb.Scheme, on: str, **options: object) -> Evidence:
 def refutations(evidence: Evidence) -> dict[str, dict[str, str]]:
     """Return the refuting sentences of each kind of evidence, by claim.
 
-    A sampled row counts for itself only where one-step evidence agrees with its claim.
+    A row of errors counts for itself only where one-step evidence agrees with its claim; a check
+    of propagated errors, only where the claim is refuted in its words.
     """
-    found: dict[str, dict[str, str]] = {"contract": {}, ONE_STEP: {}, SAMPLED: {}}
+    kinds = ("contract", ONE_STEP, SAMPLED, PROPAGATED)
+    found: dict[str, dict[str, str]] = {kind: {} for kind in kinds}
+    told = {claim.kind: claim.sentence for claim in evidence.claims}
     for row in evidence.results:
         if row.verdict is not sb.Verdict.REFUTED:
             continue
@@ -79,6 +89,8 @@ def refutations(evidence: Evidence) -> dict[str, dict[str, str]]:
             found["contract"]["contract"] = row.sentence
         elif row.kind == ONE_STEP:
             found[ONE_STEP][row.bears_on] = row.sentence
-        elif row.bears_on not in found[ONE_STEP]:
-            found[SAMPLED][row.bears_on] = row.sentence
+        elif row.bears_on not in found[ONE_STEP] and (
+            not row.check or told[row.bears_on] in row.sentence
+        ):
+            found[row.route][row.bears_on] = row.sentence
     return found

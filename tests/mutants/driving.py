@@ -6,7 +6,7 @@ import numpy as np
 
 from sdebench.contract import Law
 from tests.mutants.catalogue import ONE_STEP, Family
-from tests.mutants.steps import euler, milstein, taylor_gbm
+from tests.mutants.steps import euler, milstein, taylor, taylor_gbm
 
 family = Family("driving-noise")
 kept: dict[str, np.ndarray] = {}
@@ -100,6 +100,15 @@ def time_integral_missing(sde, t, x, h, noise):
 def time_integral_on_a_wrong_scale(sde, t, x, h, noise):
     wrong = sde.params["mu"] * sde.diffusion(t, x) * noise.dz * (math.sqrt(h) - 1)
     return taylor_gbm(sde, x, h, noise.dw, noise.dz) + wrong
+
+
+@family.mutant(
+    "ou", ONE_STEP, {"strong": "allow strong order 1.00"}, strong=1.5, noise=("dw", "dz")
+)
+def mixed_terms_exchanged(sde, t, x, h, noise):
+    # L0 b = L1 a, so that nothing is wrong, wherever X_T is a function of T and W_T alone: of the
+    # problems at hand, everywhere else.
+    return taylor(sde, t, x, h, noise.dw, noise.dz, exchanged=True)
 
 
 @family.mutant(

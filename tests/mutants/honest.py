@@ -10,7 +10,7 @@ import math
 import numpy as np
 
 import sdebench as sb
-from tests.mutants.steps import euler, milstein, taylor_gbm
+from tests.mutants.steps import euler, milstein, taylor
 
 
 @sb.scheme(strong=1.0, weak=1.0)
@@ -108,7 +108,7 @@ def drift_averaged_over_the_step(sde, t, x, h, noise):
 
 @sb.scheme(strong=1.5, weak=2.0, noise=("dw", "dz"))
 def taylor_of_strong_order_15(sde, t, x, h, noise):
-    return taylor_gbm(sde, x, h, noise.dw, noise.dz)
+    return taylor(sde, t, x, h, noise.dw, noise.dz)
 
 
 @sb.scheme(strong=1.0, weak=2.0)
@@ -123,6 +123,14 @@ def exact_law_on_ornstein_uhlenbeck(sde, t, x, h, noise):
     theta, mean, sigma = (sde.params[name] for name in ("theta", "mean", "sigma"))
     spread = math.sqrt(-math.expm1(-2 * theta * h) / (2 * theta * h))
     return mean + (x - mean) * math.exp(-theta * h) + sigma * spread * noise.dw
+
+
+@sb.scheme(strong=4.0, weak=4.0, noise="decayed")
+def decay_to_the_fourth_power_on_ornstein_uhlenbeck(sde, t, x, h, noise):
+    theta, mean, sigma = (sde.params[name] for name in ("theta", "mean", "sigma"))
+    u = theta * h
+    kept = 1 - u + u**2 / 2 - u**3 / 6 + u**4 / 24
+    return mean + (x - mean) * kept + sigma * noise.decayed
 
 
 @sb.scheme(weak=1.0)

@@ -1,8 +1,13 @@
 """Every integrator that is wrong on purpose is refuted, by the evidence that sees its fault.
 
-One look of 32768 paths at the default seed. What one step and the contract say does not depend
-on the seed; the sampled verdicts are repeated over 20 seeds in `test_seeds.py`.
+One look of 32768 paths at the default seed. What one step, the contract and propagation say does
+not depend on the seed; the sampled verdicts are repeated over 20 seeds in `test_seeds.py`. Where
+one step or the contract decides, the errors of whole paths are cut short; in full they are
+measured for the first of each family, and for all as a calibration, where no wrong step may make
+the two routes contradict each other.
 """
+
+from collections.abc import Mapping
 
 import pytest
 
@@ -20,8 +25,17 @@ from tests.mutants import (
     precision,
     somewhere,
     step_length,
+    tiny,
 )
-from tests.mutants.catalogue import ONE_STEP, SAMPLED, Mutant, measured, refutations
+from tests.mutants.catalogue import (
+    LEAST,
+    ONE_STEP,
+    PROPAGATED,
+    SAMPLED,
+    Mutant,
+    measured,
+    refutations,
+)
 
 FAMILIES = [
     module.family
@@ -37,9 +51,11 @@ FAMILIES = [
         parameters,
         overclaims,
         hidden,
+        tiny,
     )
 ]
 MUTANTS = [mutant for family in FAMILIES for mutant in family.mutants]
+LOCAL = [family for family in FAMILIES if family.mutants[0].by not in (SAMPLED, PROPAGATED)]
 BREAKERS = [mutant for mutant in MUTANTS if isinstance(mutant.by, Law)]
 
 
@@ -47,21 +63,35 @@ def by_label(mutants):
     return {"argvalues": mutants, "ids": [mutant.label for mutant in mutants]}
 
 
-@pytest.mark.parametrize(
-    "mutant",
-    [pytest.param(mutant, id=mutant.label) for mutant in MUTANTS],
-)
-def test_a_wrong_integrator_is_refuted_for_its_own_fault(mutant: Mutant):
-    evidence = measured(mutant.scheme, mutant.on)
+def check(mutant: Mutant, options: Mapping[str, object]):
+    """Hold a mutant's evidence against what must refute it."""
+    evidence = measured(mutant.scheme, mutant.on, **options)
     assert (evidence.verdict, evidence.exit_code) == (sb.Verdict.REFUTED, 1)
     kind = "contract" if isinstance(mutant.by, Law) else mutant.by
     found = refutations(evidence)
-    first = next(k for k in ("contract", ONE_STEP, SAMPLED) if found[k])
+    first = next(k for k in ("contract", ONE_STEP, SAMPLED, PROPAGATED) if found[k])
     assert (first, set(found[kind])) == (kind, set(mutant.says))
     told = {claim.kind: claim.sentence for claim in evidence.claims}
     for claim, phrase in mutant.says.items():
         assert phrase in found[kind][claim]
         assert phrase in told[claim]
+
+
+@pytest.mark.parametrize("mutant", **by_label(MUTANTS))
+def test_a_wrong_integrator_is_refuted_for_its_own_fault(mutant: Mutant):
+    by_paths = mutant.by in (SAMPLED, PROPAGATED)
+    check(mutant, mutant.options if by_paths else LEAST)
+
+
+@pytest.mark.parametrize("mutant", **by_label([family.mutants[0] for family in LOCAL]))
+def test_by_default_the_first_of_a_family_is_refuted_for_its_own_fault(mutant: Mutant):
+    check(mutant, {})
+
+
+@pytest.mark.calibration
+@pytest.mark.parametrize("mutant", **by_label([m for m in MUTANTS if not m.options.get("steps")]))
+def test_by_default_a_wrong_integrator_is_refuted_for_its_own_fault(mutant: Mutant):
+    check(mutant, {})
 
 
 @pytest.mark.parametrize("mutant", **by_label(BREAKERS))

@@ -1,7 +1,9 @@
-"""What sampling alone decides, it decides on every seed: 20 of them, five in the fast set.
+"""What sampling alone decides, it decides on every seed: 20 of them, one in the fast set,
+beside the default one of `test_mutants.py`.
 
 The faults are many times what 32768 paths resolve: the bounds on each order stay below its claim
-by four times their width or more. Some 30 paths of a rung end in the rarest NaN, and none with a
+by four times their width or more. What is propagated depends on no seed, its check does, with a
+false alarm of 1e-6 a run. Some 30 paths of a rung end in the rarest NaN, and none with a
 probability of 1e-13. A sound claim is refuted with a probability of at most 1 - C = 0.05 a run by
 the bench's own policy, and far less where the order is clear of its claim, as it is here.
 """
@@ -13,8 +15,8 @@ from tests.mutants import hidden
 from tests.mutants.catalogue import SAMPLED, Mutant, measured, refutations
 
 SEEDS = [
-    pytest.param(range(1, 6), id="seeds-1-to-5"),
-    pytest.param(range(6, 21), id="seeds-6-to-20", marks=pytest.mark.calibration),
+    pytest.param(range(2, 3), id="seed-2"),
+    pytest.param(range(3, 21), id="seeds-3-to-20", marks=pytest.mark.calibration),
 ]
 
 
@@ -22,7 +24,7 @@ SEEDS = [
 @pytest.mark.parametrize("mutant", hidden.family.mutants, ids=lambda mutant: mutant.label)
 def test_a_fault_that_only_whole_paths_meet_is_refuted_on_every_seed(mutant: Mutant, seeds: range):
     for seed in seeds:
-        evidence = measured(mutant.scheme, mutant.on, seed=seed)
+        evidence = measured(mutant.scheme, mutant.on, seed=seed, route="sampled")
         assert evidence.verdict is sb.Verdict.REFUTED
         assert set(mutant.says) <= set(refutations(evidence)[SAMPLED])
 

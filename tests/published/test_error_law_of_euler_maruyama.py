@@ -27,6 +27,7 @@ def test_mean_absolute_errors_tend_to_the_limit_law(spec):
     p = problem.params
     evidence = sb.measure(
         "euler-maruyama",
+        route="sampled",
         on=problem,
         steps=(8, 32, 128),
         looks=3,

@@ -155,6 +155,7 @@ def test_one_euler_step_misprices_by_the_difference_of_two_formulas(call):
     """
     evidence = sb.measure(
         "euler-maruyama",
+        route="sampled",
         on=call.problem,
         functionals=[call.functional],
         steps=(1, 2, 4),
@@ -178,6 +179,7 @@ def test_the_better_strong_order_does_not_buy_the_better_price():
     for name in ("euler-maruyama", "milstein"):
         evidence = sb.measure(
             name,
+            route="sampled",
             on=call.problem,
             functionals=[call.functional],
             steps=(2, 4, 8),

@@ -137,6 +137,7 @@ def test_euler_maruyama_has_the_known_stationary_variance():
     horizon, steps = 20.0, (50, 100, 200)
     evidence = sb.measure(
         "euler-maruyama",
+        route="sampled",
         on=sb.problem("ou", theta=1.0, sigma=1.0, mean=0.0, x0=0.0, horizon=horizon),
         steps=steps,
         looks=1,

@@ -36,6 +36,7 @@ def strong():
     """65536 paths, seed 1."""
     evidence = sb.measure(
         "euler-maruyama",
+        route="sampled",
         on=sb.problem("gbm", mu=MU, sigma=SIGMA, x0=1.0),
         steps=STEPS,
         looks=2,

@@ -33,6 +33,7 @@ def mean_row():
     """32768 paths, seed 1."""
     evidence = sb.measure(
         "euler-maruyama",
+        route="sampled",
         on=sb.problem("gbm", mu=2.0, sigma=0.1, x0=1.0),
         steps=sorted(WEAK),
         looks=1,

@@ -49,6 +49,7 @@ def test_the_blocks_are_those_that_are_tested_here():
         ("run", "test"),
         ("file", "desk.py"),
         ("run", "example"),
+        ("run", "advice"),
         ("run", "python"),
     }
 
@@ -64,6 +65,21 @@ def test_the_example_is_supported_on_every_problem(desk):
     )
     assert (done.returncode, done.stderr) == (0, "")
     assert "Verdict: supported (6 supported)" in done.stdout
+
+
+def test_the_desks_step_is_advised_and_compared(desk):
+    folder, environment = desk
+    done = subprocess.run(
+        ["sh", "-ec", BLOCKS["run", "advice"]],
+        cwd=folder,
+        env=environment,
+        capture_output=True,
+        text=True,
+    )
+    assert (done.returncode, done.stderr) == (0, "")
+    first, second = (line.split()[0] for line in done.stdout.splitlines()[2:4])
+    assert (first, second) == ("desk.py:desk_step", "euler-maruyama")
+    assert "desk.py:desk_step has the smaller error on every rung" in done.stdout
 
 
 def test_the_python_example_runs_and_saves_its_evidence(desk):

@@ -15,6 +15,12 @@ def supported_evidence() -> sb.Evidence:
 
 
 @pytest.fixture(scope="session")
+def sampled_evidence() -> sb.Evidence:
+    """The same by sampling alone."""
+    return sb.measure("milstein", on="gbm", route="sampled", looks=1, threads=1)
+
+
+@pytest.fixture(scope="session")
 def refuted_evidence() -> sb.Evidence:
     """Evidence that refutes a strong order 1 of a step without Milstein's correction."""
 

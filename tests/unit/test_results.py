@@ -20,8 +20,8 @@ def test_a_finite_number_stays():
     assert finite(0.25) == 0.25
 
 
-def test_rows_come_as_contract_one_step_and_sampled(supported_evidence):
-    found = [(r.kind, r.bears_on, r.functional) for r in supported_evidence.results]
+def test_rows_come_as_contract_one_step_and_sampled(sampled_evidence):
+    found = [(r.kind, r.bears_on, r.functional) for r in sampled_evidence.results]
     assert found == [
         ("contract", None, None),
         ("one-step", "strong", None),
@@ -31,9 +31,46 @@ def test_rows_come_as_contract_one_step_and_sampled(supported_evidence):
     ]
 
 
-def test_every_row_says_how_it_was_obtained(supported_evidence):
-    routes = [r.route for r in supported_evidence.results]
+def test_every_row_says_how_it_was_obtained(sampled_evidence):
+    routes = [r.route for r in sampled_evidence.results]
     assert routes == [None, "quadrature", "quadrature", *["sampled"] * 4]
+
+
+def test_every_row_is_propagated_and_checked_by_a_sample(supported_evidence):
+    measured = supported_evidence.results[3:]
+    assert [r.route for r in measured] == ["propagated", "sampled"] * 4
+    assert [r.check for r in measured] == [False, True] * 4
+    assert [r.counts for r in measured] == [True, False] * 4
+
+
+def test_a_check_says_that_the_routes_agree(supported_evidence):
+    for row in supported_evidence.results[3:]:
+        assert ("which it agrees with" in row.sentence) is row.check
+
+
+def test_a_check_has_the_rungs_that_a_modest_sample_can_measure(supported_evidence):
+    propagated, check = supported_evidence.results[3:5]
+    assert [r.steps for r in propagated.rungs] == [4, 16, 64, 256, 1024, 4096]
+    assert [r.steps for r in check.rungs] == [4, 8, 16, 32, 64]
+
+
+def test_what_cannot_be_propagated_says_why():
+    evidence = sb.measure("milstein", on="ramped-noise", looks=1, threads=1)
+    reasons = {r.why_sampled for r in evidence.results if r.route == "sampled"}
+    assert reasons == {"ramped-noise depends on time"}
+
+
+def test_a_row_that_is_to_be_propagated_alone_and_cannot_be_is_undecided():
+    evidence = sb.measure("milstein", on="ramped-noise", route="propagated", threads=1)
+    assert evidence.verdict is Verdict.UNDECIDED
+    assert {r.route for r in evidence.results} == {None, "quadrature"}
+    assert "ramped-noise depends on time" in evidence.claims[0].sentence
+
+
+def test_one_route_alone_is_all_there_is():
+    for route in ("propagated", "sampled"):
+        evidence = sb.measure("milstein", on="gbm", route=route, looks=1, threads=1)
+        assert {r.route for r in evidence.results[3:]} == {route}
 
 
 def test_the_references_are_the_exact_expectations(supported_evidence):
@@ -48,8 +85,8 @@ def test_the_references_are_the_exact_expectations(supported_evidence):
     assert abs(found["second-moment"] - second) <= doubt["second-moment"] + round_off(second, 64)
 
 
-def test_rungs_say_their_step_sizes(supported_evidence):
-    for row in supported_evidence.results[3:]:
+def test_rungs_say_their_step_sizes(sampled_evidence):
+    for row in sampled_evidence.results[3:]:
         assert [(r.steps, r.h) for r in row.rungs] == [(n, 1 / n) for n in (4, 8, 16, 32, 64)]
 
 
@@ -60,22 +97,22 @@ def test_the_order_of_a_row_is_the_local_order_of_its_finest_counting_rung(suppo
         assert row.low < row.order < row.high
 
 
-def test_a_local_order_is_that_of_the_errors_of_two_rungs(supported_evidence):
-    for row in supported_evidence.results[3:]:
+def test_a_local_order_is_that_of_the_errors_of_two_rungs(sampled_evidence):
+    for row in sampled_evidence.results[3:]:
         before, after = (r for r in row.rungs[1:3])
         known = math.log2(abs(before.error / after.error))
         assert abs(after.local_order - known) <= round_off(4.0, 16)
         assert row.rungs[0].local_order is None
 
 
-def test_the_mean_absolute_error_is_below_the_root_mean_square(supported_evidence):
-    for rung in supported_evidence.results[3].rungs:
+def test_the_mean_absolute_error_is_below_the_root_mean_square(sampled_evidence):
+    for rung in sampled_evidence.results[3].rungs:
         assert 0 < rung.mean_absolute < rung.error
         assert rung.mean_absolute_uncertainty > 0
 
 
-def test_rows_of_one_sample_carry_the_same_cost(supported_evidence):
-    costs = {r.cost for r in supported_evidence.results[3:]}
+def test_rows_of_one_sample_carry_the_same_cost(sampled_evidence):
+    costs = {r.cost for r in sampled_evidence.results[3:]}
     assert len(costs) == 1
     cost = costs.pop()
     assert (cost.looks, cost.threads, cost.normals) == (1, 1, 64 * cost.paths)

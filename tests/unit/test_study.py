@@ -26,6 +26,12 @@ def numbers(evidence: sb.Evidence) -> list:
     return [evidence.claims, found]
 
 
+@pytest.fixture(scope="module")
+def quick() -> sb.Evidence:
+    """Return a quick run of Milstein, by both routes."""
+    return sb.measure("milstein", **QUICK)
+
+
 @pytest.mark.parametrize("schemes", ["milstein", ["milstein"], ("milstein",)], ids=repr)
 def test_one_scheme_or_several_may_be_given(schemes):
     evidence = sb.measure(schemes, **QUICK)
@@ -59,38 +65,41 @@ def test_a_problem_that_was_named_and_does_not_apply_is_shown_as_such():
     assert {c.verdict for c in evidence.claims} == {Verdict.NOT_APPLICABLE}
 
 
-def test_the_same_seed_gives_the_same_numbers_on_any_number_of_threads():
-    one = sb.measure("milstein", **QUICK)
+def test_the_same_seed_gives_the_same_numbers_on_any_number_of_threads(quick):
     two = sb.measure("milstein", **(QUICK | {"threads": 2}))
-    assert numbers(one) == numbers(two)
+    assert numbers(quick) == numbers(two)
 
 
-def test_another_seed_gives_other_numbers():
-    assert numbers(sb.measure("milstein", **QUICK)) != numbers(
-        sb.measure("milstein", **QUICK, seed=2)
-    )
+def test_another_seed_gives_other_numbers(quick):
+    assert numbers(quick) != numbers(sb.measure("milstein", **QUICK, seed=2))
 
 
-def test_the_errors_of_a_scheme_do_not_depend_on_what_else_is_measured():
-    alone = sb.measure("milstein", **QUICK)
+def test_the_errors_of_a_scheme_do_not_depend_on_what_else_is_measured(quick):
     beside = sb.measure(["euler-maruyama", "milstein"], **QUICK)
 
     def errors(evidence):
         rows = [r for r in evidence.results if r.scheme == "milstein"]
         return [rung.error for r in rows for rung in r.rungs]
 
-    assert errors(alone) == errors(beside)
+    assert errors(quick) == errors(beside)
 
 
 def test_intervals_are_shared_among_all_rows_of_the_run():
     """Twice the rows halve each row's error probability, which widens its interval."""
-    alone = sb.measure("milstein", **QUICK)
-    beside = sb.measure(["euler-maruyama", "milstein"], **QUICK)
+    alone = sb.measure("milstein", route="sampled", **QUICK)
+    beside = sb.measure(["euler-maruyama", "milstein"], route="sampled", **QUICK)
 
     def low(evidence):
         return next(c.low for c in evidence.claims if c.scheme == "milstein")
 
     assert low(beside) < low(alone)
+
+
+def test_intervals_of_propagated_errors_are_bounds_and_are_not_shared():
+    """They hold no chance, so that other rows of the run and the seed do not move them."""
+    alone = sb.measure("milstein", route="propagated", **QUICK)
+    beside = sb.measure(["euler-maruyama", "milstein"], route="propagated", **QUICK, seed=2)
+    assert [c for c in beside.claims if c.scheme == "milstein"] == alone.claims
 
 
 def test_looks_are_taken_exactly_as_often_as_said():
@@ -109,8 +118,52 @@ def test_further_functionals_come_beside_the_standard_ones():
         return x**0.5
 
     evidence = sb.measure("milstein", functionals=[square_root], **QUICK)
-    found = [r.functional for r in evidence.results if r.kind == "weak"]
+    found = [r.functional for r in evidence.results if r.kind == "weak" and r.counts]
     assert found == ["mean", "second-moment", "cos", "square-root"]
+    checks = [r.functional for r in evidence.results if r.kind == "weak" and r.check]
+    assert checks == found
+
+
+@pytest.mark.parametrize("route", ["quadrature", "both", "", 1], ids=repr)
+def test_a_route_that_does_not_exist_is_refused(route):
+    with pytest.raises(sb.SdebenchError, match="it is 'propagated', 'sampled', or left out"):
+        sb.measure("milstein", route=route, **QUICK)
+
+
+def test_errors_are_propagated_to_4096_steps_and_checked_to_64_by_default(supported_evidence):
+    assert supported_evidence.provenance.steps == [4, 8, 16, 32, 64, 256, 1024, 4096]
+    assert "--steps" not in supported_evidence.provenance.command
+
+
+def test_the_users_steps_are_those_of_both_routes(quick):
+    for row in quick.results[3:]:
+        assert [rung.steps for rung in row.rungs] == [4, 8, 16]
+
+
+def test_the_steps_of_a_check_end_at_64_though_the_users_do_not():
+    evidence = sb.measure("milstein", **(QUICK | {"steps": (16, 32, 64, 128, 256)}))
+    steps = {row.check: [r.steps for r in row.rungs] for row in evidence.results[3:]}
+    assert steps == {False: [16, 32, 64, 128, 256], True: [16, 32, 64]}
+
+
+@pytest.mark.parametrize("route", ["propagated", "sampled"])
+def test_the_command_names_a_route_that_was_taken_alone(route):
+    command = sb.measure("milstein", route=route, **QUICK).provenance.command
+    assert dict(pairwise(shlex.split(command)))["--route"] == route
+
+
+def test_the_command_of_a_run_by_both_routes_names_none(quick):
+    assert "--route" not in quick.provenance.command
+
+
+def test_the_seed_moves_what_is_sampled_and_nothing_that_is_propagated(quick):
+    other = sb.measure("milstein", **QUICK, seed=2)
+
+    def errors(evidence, route):
+        return [rung.error for r in evidence.results if r.route == route for rung in r.rungs]
+
+    assert errors(quick, "propagated") == errors(other, "propagated")
+    assert errors(quick, "sampled") != errors(other, "sampled")
 
 
 def test_progress_is_told_to_its_end():
@@ -195,6 +248,16 @@ def test_an_honest_scheme_that_is_unstable_on_every_rung_is_undecided(on):
     evidence = sb.measure("euler-maruyama", on=on, looks=1, threads=1)
     assert {c.verdict for c in evidence.claims} == {Verdict.UNDECIDED}
     assert all("--steps" in c.sentence for c in evidence.claims)
+
+
+@pytest.mark.filterwarnings("error")
+@pytest.mark.xfail(
+    strict=True,
+    raises=RuntimeWarning,
+    reason="a ratio of changes overflows outside of the block in which overflow is expected",
+)
+def test_a_scheme_that_is_unstable_has_no_warning_printed():
+    sb.measure("euler-maruyama", on="ou:theta=1000", route="propagated", threads=1)
 
 
 def test_an_honest_scheme_that_overflows_on_some_paths_only_is_undecided():

@@ -201,9 +201,19 @@ def test_every_verdict_has_a_meaning(verdict):
         (Interval(0.5, -math.inf, 0.75), "0.50 (no lower bound to 0.75)"),
         (Interval(0.5, 0.25, math.inf), "0.50 (0.25 upward)"),
         (Interval(0.5, -math.inf, math.inf), "0.500 (no lower bound upward)"),
-        (Interval(1.0, 1.0, 1.0), "1.000 (1.000 to 1.000)"),
+        (Interval(1.0, 1.0, 1.0), "1.000"),
+        (Interval(0.998312, 0.998271, 0.998353), "0.99831 (0.99827 to 0.99835)"),
+        (Interval(0.999832, 0.999831, 0.999833), "0.99983"),
     ],
-    ids=["both ends", "no lower end", "no upper end", "no end", "no width"],
+    ids=[
+        "both ends",
+        "no lower end",
+        "no upper end",
+        "no end",
+        "no width",
+        "five digits at the most",
+        "narrower than five digits",
+    ],
 )
 def test_an_interval_is_shown_to_the_digits_that_mean_something(interval, text):
     assert shown(interval) == text
