@@ -106,8 +106,8 @@ def _gbm_whose_steps_do_not_join() -> sb.Problem:
     """Return GBM with a flow that is exact over the horizon, and not over a part of it.
 
     N of its steps of length h end off by a factor of some 1 + 0.0015 (T - h). E X_T² moves by less
-    than a third of a hundredth, as much as the nodes may miss it by. Weak errors move by far more, of
-    which a sample, whose exact end is one step, sees nothing.
+    than a third of a hundredth, as much as the nodes may miss it by. Weak errors move by far more,
+    of which a sample, whose exact end is one step, sees nothing.
     """
     right = sb.problem("gbm")
 

@@ -157,7 +157,7 @@ def test_powers_of_h_of_one_sign_give_no_outlier(steps, terms, power, relative):
     assert outlier_of(steps, summed(steps, terms, power), power, relative) is None
 
 
-@settings(max_examples=300, deadline=None, derandomize=True)
+@settings(max_examples=150, deadline=None, derandomize=True)
 @given(
     long_ladders,
     st.lists(st.tuples(signed, exponents), min_size=3, max_size=3),

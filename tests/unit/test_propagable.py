@@ -205,6 +205,25 @@ def test_a_step_that_changes_abruptly_within_a_narrow_band_alone_is_found():
     assert abs(math.log(told_place(abrupt) / 0.65)) <= 2 * width
 
 
+def test_a_step_that_changes_abruptly_where_the_state_is_small_is_found():
+    """By a part of the state; it would catch moves in x, beside which this one is lost."""
+
+    def abrupt(sde, t, x, h, noise):
+        return euler(sde, t, x, h, noise) + np.where(x < 0.14, 0.02 * x, 0.0)
+
+    place = told_place(abrupt, steps=(4,))
+    assert abs(math.log(place / 0.14)) <= 2 * spacing_in_u(sb.problem("gbm"), TRIED)
+
+
+def test_a_step_that_is_steep_in_the_state_is_not_abrupt():
+    """A rise over some four nodes, which they tell to 1e-4; it would catch fewer nodes."""
+
+    def steep(sde, t, x, h, noise):
+        return euler(sde, t, x, h, noise) + h * x * np.tanh(np.log(x / 0.65) / 0.1)
+
+    assert why(steep) is None
+
+
 @pytest.mark.parametrize("on", ["gbm", "ou", "tanh", "arctan", "arcsinh", "sinh"])
 def test_a_step_that_changes_smoothly_with_the_state_is_not_abrupt(on):
     """With a correction that bends over the whole reach of the state."""

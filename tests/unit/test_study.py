@@ -251,11 +251,6 @@ def test_an_honest_scheme_that_is_unstable_on_every_rung_is_undecided(on):
 
 
 @pytest.mark.filterwarnings("error")
-@pytest.mark.xfail(
-    strict=True,
-    raises=RuntimeWarning,
-    reason="a ratio of changes overflows outside of the block in which overflow is expected",
-)
 def test_a_scheme_that_is_unstable_has_no_warning_printed():
     sb.measure("euler-maruyama", on="ou:theta=1000", route="propagated", threads=1)
 
