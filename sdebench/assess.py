@@ -7,13 +7,13 @@ from typing import Literal
 
 import numpy as np
 
-from sdebench.constant import error_constant, limiting_order
+from sdebench.constant import settled_constant
 from sdebench.errors import BadFunctional, BenchFault
-from sdebench.evidence import finite
+from sdebench.evidence import ErrorConstant, finite
 from sdebench.integrator import Claim
+from sdebench.ladder import ROUND_OFF, round_off
 from sdebench.orders import (
     Errors,
-    Interval,
     Order,
     counting_rungs,
     observed_order,
@@ -28,10 +28,6 @@ from sdebench.verdict import Ruling, Verdict, finer, judge
 # each (±2%), nominal 95% intervals covered 90 to 100% with median shares below 0.1, 85 to 95% from
 # 0.1 to 0.2, and 81 to 93% above.
 TRUSTED_SHARE = 0.1
-
-# Round-off of an end point relative to its size, a step: some eight operations of half an ulp,
-# adding up in the worst case.
-ROUND_OFF = 4 * float(np.finfo(float).eps)
 
 # Probability that a run calls a sound flow and law inconsistent.
 FAULT_ALARM = 1e-6
@@ -83,13 +79,11 @@ class Assessment:
     shares: Array | None = None
     dropped: tuple[str | None, ...] = ()
 
-    def constant(self, horizon: float) -> tuple[float, Interval] | None:
-        """The order that the errors settle at and their constant, where they settle."""
-        if self.order is None or not self.trusted:
+    def constant(self, horizon: float) -> ErrorConstant | None:
+        """Return the error constant, where the errors are trusted and settle at an order."""
+        if not self.trusted:
             return None
-        p = limiting_order(self.order)
-        found = p and error_constant(self.errors, self.order, p, horizon, self.quantile)
-        return (p, found) if p and found else None
+        return settled_constant(self.errors, self.order, horizon, self.quantile)
 
     @property
     def bounds(self) -> tuple[float | None, float | None, float | None]:
@@ -193,11 +187,6 @@ def _rows(sample: Sample, row: Row) -> list[int]:
     if row.functional is not None:
         return list(rows.weak(row.functional))
     return list(rows.grid if row.at == "grid" else rows.squares)
-
-
-def round_off(steps: Sequence[int], scale: float) -> Array:
-    """Return the round-off of end points of size `scale` after so many steps."""
-    return ROUND_OFF * scale * np.array(steps, dtype=float)
 
 
 def _overflow(

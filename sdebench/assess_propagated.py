@@ -6,10 +6,12 @@ from itertools import pairwise
 
 import numpy as np
 
-from sdebench.assess import FAULT_ALARM, Assessment, Levels, Row, round_off
+from sdebench.assess import FAULT_ALARM, Assessment, Levels, Row
 from sdebench.errors import BenchFault
+from sdebench.ladder import round_off
 from sdebench.orders import Errors, counting_rungs, observed_order, student_quantile
-from sdebench.propagate import Estimate, Propagated
+from sdebench.propagate import Propagated
+from sdebench.refine import Estimate
 from sdebench.sde import Array
 from sdebench.verdict import Ruling, Verdict, judge
 
@@ -18,6 +20,7 @@ from sdebench.verdict import Ruling, Verdict, judge
 BOX = math.sqrt(3.0)
 SHARP = 0.01  # relative uncertainty up to which a rung is preferred to blunter ones
 ENOUGH = 3  # sharp rungs, for an order with a trend
+MORE_LOOKS = 7
 
 
 def assess_propagated(
@@ -116,6 +119,34 @@ def check_routes(
             )
     return (
         f"A check of the propagated errors, which it agrees with ({worst:.0%} of what is allowed)."
+    )
+
+
+def doubt(propagated: Assessment, sampled: Assessment, n_checks: int) -> Ruling | None:
+    """Return why a mean square is not to be believed that an untrusted sample speaks against.
+
+    A tail too heavy to trust makes a sample's mean square too small far more often than too large:
+    one that is far above, by Student's t, or that stands out on a rung, may see what nodes do not.
+    """
+    if sampled.trusted:
+        return None
+    bound = student_quantile(FAULT_ALARM / max(n_checks, 1), sampled.errors.dof)
+    mine, theirs = propagated.errors, sampled.errors
+    above = [
+        theirs.steps[other]
+        for own, other in _common(propagated, sampled)
+        if theirs.measures[other] - mine.measures[own]
+        > bound * theirs.standard_errors[other] + mine.standard_errors[own] + mine.floors[own]
+    ]
+    if sampled.order is not None and sampled.order.outlier is not None:
+        above.append(theirs.steps[sampled.order.outlier[0]])
+    if not above:
+        return None
+    return Ruling(
+        Verdict.UNDECIDED,
+        f"With {above[0]} steps sampled errors are far larger than propagated ones, on a few "
+        "paths: the step may do something else on rare paths or at that step size. Look at it "
+        f"there, or sample more (--route sampled --looks {MORE_LOOKS}).",
     )
 
 

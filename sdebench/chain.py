@@ -105,14 +105,15 @@ class Chain:
         states within two standard deviations of the end's law; raises `NotFinite`.
         """
         low, high = reach(self.problem, TYPICAL)[::2]
-        grid = Grid(N_TYPICAL, low, high)
+        grid = Grid.of(self.problem, N_TYPICAL, BASE.width)
+        typical = (grid.u >= low) & (grid.u <= high)
         pairs = Pairs.of(self.problem, grid, ErrorPolynomials(2, LEAST))
         nodes = Nodes.of(self.scheme, self.problem, self.h, spaced_normal(0.5, BETWEEN), 4)
         within = np.abs(nodes.noise["dw"]) < 2 * TYPICAL * self.h**0.5
         with np.errstate(all="ignore"):
             exact = Exact.of(self.problem, grid, self.h, nodes.noise)
             error = take_step(self.scheme, self.problem, self.h, pairs, nodes.noise, exact)
-        r = error[:, 1, within]
+        r = error[typical, 1][:, within]
         weights = nodes.weights[within]
         squares = self.steps * (r * r @ weights) + (self.steps * (r @ weights)) ** 2
         return float(np.sqrt(squares.max())) + LEAST * (high - low)

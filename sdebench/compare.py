@@ -8,17 +8,16 @@ from typing import Literal
 import msgspec
 import numpy as np
 
-from sdebench.assess import Assessment, Levels, Row, round_off
+from sdebench.assess import Assessment, Levels, Row
 from sdebench.assess_propagated import BOX
 from sdebench.discovery import find_scheme
 from sdebench.duet import Duet
 from sdebench.errors import BadOption
 from sdebench.evidence import ErrorConstant
 from sdebench.integrator import Claim, ClaimKind, Scheme
-from sdebench.ladder import DEFAULT, PROPAGATED, Ladder
+from sdebench.ladder import DEFAULT, PROPAGATED, Ladder, round_off
 from sdebench.orders import Errors, student_quantile
 from sdebench.pair import Pair, Routes
-from sdebench.problem import Problem
 from sdebench.ratios import Both, ComparedRung
 from sdebench.request import (
     FunctionalLike,
@@ -88,7 +87,7 @@ def compare(
     chosen = chosen_functionals(functionals)
     own = None if steps is None else Ladder.of(steps)
     asked = [p for _, p in chosen_pairs(first, on)]
-    problems = [p for p in asked if _applies(first, p) and _applies(second, p)]
+    problems = [p for p in asked if p.offers((*first.noise, *second.noise))]
     if not problems or (on is not None and problems != asked):
         alone = next((p.label for p in asked if p not in problems), "nothing")
         rule = f"{first.label} and {second.label} share no problem there"
@@ -99,10 +98,6 @@ def compare(
         plan = Plan(first, problem, own or DEFAULT, chosen, seed)
         found += _Sides(plan, second, own or PROPAGATED, levels, threads or processors()).compared()
     return found
-
-
-def _applies(scheme: Scheme, problem: Problem) -> bool:
-    return set(scheme.noise) <= set(problem.functionals)
 
 
 class _Sides:

@@ -2,10 +2,24 @@
 
 from itertools import pairwise
 
+from sdebench.evidence import ErrorConstant
 from sdebench.orders import Errors, Interval, Order, distance
 
 ROUNDED_TO = 0.5  # orders of published schemes are multiples of this
 NEAR = 0.1  # an extrapolated order this near to such a multiple is taken for it
+
+
+def settled_constant(
+    errors: Errors, order: Order | None, horizon: float, quantile: float
+) -> ErrorConstant | None:
+    """Return the constant of errors whose order settles at a multiple of one half, else None."""
+    p = limiting_order(order) if order is not None else None
+    if order is None or p is None:
+        return None
+    c = error_constant(errors, order, p, horizon, quantile)
+    if c is None:
+        return None
+    return ErrorConstant(order=p, value=c.estimate, low=c.low, high=c.high)
 
 
 def limiting_order(order: Order) -> float | None:

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from itertools import pairwise
 
 import numpy as np
+from numpy.typing import NDArray
 
 from sdebench.errors import BadOption
 
@@ -55,6 +56,16 @@ class Ladder:
     def octaves(self) -> tuple[float, ...]:
         """log2 of `ratios`: the distance between neighbouring rungs."""
         return tuple(math.log2(r) for r in self.ratios)
+
+
+# Round-off of an end point relative to its size, a step: some eight operations of half an ulp,
+# adding up in the worst case.
+ROUND_OFF = 4 * float(np.finfo(float).eps)
+
+
+def round_off(steps: Iterable[int], scale: float) -> NDArray[np.float64]:
+    """Return the round-off of end points of size `scale` after so many steps, shape `(rungs,)`."""
+    return ROUND_OFF * scale * np.array([*steps], dtype=np.float64)
 
 
 DEFAULT = Ladder((4, 8, 16, 32, 64))

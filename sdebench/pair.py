@@ -15,7 +15,7 @@ import numpy as np
 from sdebench import probe
 from sdebench.admission import check_functional, check_problem
 from sdebench.assess import Assessment, Levels, Row, assess, check_references
-from sdebench.assess_propagated import assess_propagated, check_routes, n_comparisons
+from sdebench.assess_propagated import assess_propagated, check_routes, doubt, n_comparisons
 from sdebench.contract import Breach, Law, fingerprint, first_breach
 from sdebench.errors import BenchFault
 from sdebench.integrator import Claim
@@ -24,7 +24,7 @@ from sdebench.onestep import OneStep, measure_one_step
 from sdebench.propagable import why_not
 from sdebench.propagate import propagate
 from sdebench.sample import Plan, Sample
-from sdebench.verdict import Ruling, Verdict, overall
+from sdebench.verdict import Ruling
 
 FIRST_BLOCKS = 2  # blocks of paths in the first look; every further look doubles the sample
 
@@ -73,6 +73,7 @@ class Pair:
         self.by_propagation: dict[Row, Assessment] = {}
         self.why_sampled: dict[Row, str] = {}
         self.agreement: dict[Row, str] = {}
+        self.doubt: Ruling | None = None
         self.propagation_seconds = 0.0
         self.local: Local | None = None
         self.fingerprint: list[bytes] = []
@@ -85,7 +86,7 @@ class Pair:
     @property
     def applies(self) -> bool:
         """Whether the problem has every functional that the scheme needs."""
-        return set(self.plan.scheme.noise) <= set(self.plan.problem.functionals)
+        return self.plan.problem.offers(self.plan.scheme.noise)
 
     @property
     def why_not(self) -> str:
@@ -155,6 +156,12 @@ class Pair:
             self.plan = replace(self.plan, ladder=self.plan.ladder.coarse_part)
             self.sample = Sample(self.plan)
 
+    def one_step_ruling(self, claim: Claim, tolerance: float) -> Ruling:
+        """Return what one-step evidence says of a claim."""
+        assert self.local is not None
+        assert self.local.one_step is not None
+        return self.local.one_step.ruling(claim, tolerance)
+
     def examine(self, tolerance: float) -> None:
         """Check the contract and, if it holds, take one-step evidence."""
         scheme, problem = self.plan.scheme, self.plan.problem
@@ -195,64 +202,6 @@ class Pair:
         """Blocks that the next look draws."""
         return self.sample.n_blocks or FIRST_BLOCKS
 
-    def settled(self, levels: Levels) -> bool:
-        """Return whether more paths could change no verdict on a claim."""
-        return all(
-            not any(a.ruling.more_paths_help for a in self.bearing(claim))
-            for claim in self.claims
-            if self.one_step_ruling(claim, levels).verdict is not Verdict.REFUTED
-        )
-
-    def bearing(self, claim: Claim) -> list[Assessment]:
-        """Return the assessments that count for a claim: resolved ones, or all if none is."""
-        own = [a for a in self.assessments if a.row.claim == claim]
-        return [a for a in own if a.counts] or own
-
-    def one_step_ruling(self, claim: Claim, levels: Levels) -> Ruling:
-        """Return what one-step evidence says of a claim."""
-        assert self.local is not None
-        assert self.local.one_step is not None
-        return self.local.one_step.ruling(claim, levels.tolerance)
-
-    def fault_in_sample(self, claim: Claim) -> Ruling | None:
-        """Return the ruling of a check that saw what finer rungs do not undo, or None."""
-        own = [a.ruling for row, a in self.by_sample.items() if row.claim == claim]
-        return next((r for r in own if r.lasting), None) if self.by_propagation else None
-
-    def not_propagated(self, row: Row) -> Ruling:
-        """Return the ruling on a row that was to be propagated alone and could not be."""
-        sentence = f"Not propagated: {self.why_sampled[row]}. Leave out --route to sample it."
-        return Ruling(Verdict.UNDECIDED, sentence)
-
-    def decisive(self, claim: Claim) -> Assessment | None:
-        """Return the assessment that the verdict on a claim rests on, of the lowest order."""
-        bearing = self.bearing(claim)
-        if not bearing:
-            return None
-        verdict = overall([a.ruling.verdict for a in bearing])
-        return min(
-            (a for a in bearing if a.ruling.verdict is verdict),
-            key=lambda a: a.order.local.estimate if a.order is not None else math.inf,
-        )
-
-    def claim_ruling(self, claim: Claim, levels: Levels) -> Ruling:
-        """Return the ruling on a claim from all evidence: one step may refute it alone."""
-        local = self.one_step_ruling(claim, levels)
-        if local.verdict is Verdict.REFUTED:
-            return local
-        seen = self.fault_in_sample(claim)
-        if seen is not None:
-            return seen
-        decisive = self.decisive(claim)
-        if decisive is None:
-            row = next(row for row in self.rows if row.claim == claim)
-            return self.not_propagated(row)
-        if decisive.row.functional is None:
-            return decisive.ruling
-        name = self.name_of(decisive.row)
-        sentence = decisive.ruling.sentence
-        return replace(decisive.ruling, sentence=f"{name}: {sentence[0].lower()}{sentence[1:]}")
-
     @property
     def n_route_checks(self) -> int:
         """How many rungs two routes have in common."""
@@ -287,3 +236,5 @@ class Pair:
                 fourth if row.functional is None else None,
                 n_route_checks,
             )
+            if row.functional is None and self.doubt is None:
+                self.doubt = doubt(propagated, self.by_sample[row], n_route_checks)

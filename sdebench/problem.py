@@ -1,7 +1,7 @@
 """The problem: an SDE plus what makes it a reference, its exact flow and its exact law."""
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field, replace
 from functools import cached_property, partial
 from types import MappingProxyType
@@ -143,6 +143,10 @@ class Problem:
     def functionals(self) -> tuple[str, ...]:
         """The Wiener functionals that a scheme may ask for on this problem."""
         return FUNCTIONALS if self.decay else tuple(n for n in FUNCTIONALS if n != "decayed")
+
+    def offers(self, noise: Iterable[str]) -> bool:
+        """Return whether a scheme that steps by these functionals applies to this problem."""
+        return set(noise) <= set(self.functionals)
 
     @cached_property
     def sde(self) -> SDE:

@@ -7,7 +7,7 @@ from typing import Literal
 import msgspec
 import numpy as np
 
-from sdebench.constant import error_constant, limiting_order
+from sdebench.constant import settled_constant
 from sdebench.evidence import ErrorConstant, finite
 from sdebench.orders import Errors, counting_rungs, observed_order, ratio_interval
 from sdebench.sde import Array
@@ -81,14 +81,8 @@ class Both:
 
     def constants(self, horizon: float) -> list[ErrorConstant | None]:
         """Return the error constants of the old and the new scheme, where errors settle."""
-        return [self._constant(errors, horizon) for errors in (self.old, self.new)]
-
-    def _constant(self, errors: Errors, horizon: float) -> ErrorConstant | None:
-        order = observed_order(errors, counting_rungs(errors, self.quantile), self.quantile)
-        p = limiting_order(order) if order is not None else None
-        if order is None or p is None:
-            return None
-        found = error_constant(errors, order, p, horizon, self.quantile)
-        if found is None:
-            return None
-        return ErrorConstant(order=p, value=found.estimate, low=found.low, high=found.high)
+        found = []
+        for errors in (self.old, self.new):
+            order = observed_order(errors, counting_rungs(errors, self.quantile), self.quantile)
+            found.append(settled_constant(errors, order, horizon, self.quantile))
+        return found

@@ -6,8 +6,9 @@ from typing import Any
 import numpy as np
 
 from sdebench.assess import Assessment, Levels, Row
+from sdebench.claims import not_propagated, overruling
 from sdebench.detection import Sensitivity, limits, plateau
-from sdebench.evidence import Cost, DetectionLimit, ErrorConstant, Kind, Result, Rung, finite
+from sdebench.evidence import Cost, DetectionLimit, Kind, Result, Rung, finite
 from sdebench.integrator import Claim
 from sdebench.onestep import OneStep
 from sdebench.orders import local_order, student_quantile
@@ -126,7 +127,7 @@ def _unmeasured(pair: Pair, row: Row) -> Result:
         pair,
         row.claim.kind,
         row.claim,
-        pair.not_propagated(row),
+        not_propagated(pair, row),
         cost,
         bears_on=row.claim.kind,
         functional=pair.name_of(row),
@@ -172,16 +173,8 @@ def _measured(
         why_sampled=pair.why_sampled.get(a.row) if a.route == "sampled" else None,
         trusted=a.trusted,
         detection_limit=limit,
-        error_constant=_error_constant(pair, a),
+        error_constant=a.constant(pair.plan.problem.horizon),
     )
-
-
-def _error_constant(pair: Pair, a: Assessment) -> ErrorConstant | None:
-    found = a.constant(pair.plan.problem.horizon)
-    if found is None:
-        return None
-    order, constant = found
-    return ErrorConstant(order=order, value=constant.estimate, low=constant.low, high=constant.high)
 
 
 def _ruling(
@@ -194,12 +187,9 @@ def _ruling(
 
     A claim that one step refutes, or a fault on some paths, is refuted in its other rows too.
     """
-    local = pair.one_step_ruling(a.row.claim, levels)
-    if local.verdict is Verdict.REFUTED:
-        return local, None
-    seen = pair.fault_in_sample(a.row.claim)
-    if seen is not None:
-        return seen, None
+    overruled = overruling(pair, a.row.claim, levels)
+    if overruled is not None:
+        return overruled, None
     if a.ruling.verdict is not Verdict.SUPPORTED:
         return a.ruling, None
     limit = _detection_limit(a, levels, sensitivity)

@@ -29,10 +29,13 @@ def step_seconds(schemes: Sequence[Scheme], problem: Problem) -> list[list[float
 
 
 def step_costs(schemes: Sequence[Scheme], problem: Problem) -> list[float]:
-    """Return the median seconds of a step of a path for each scheme that the problem suits."""
-    suited = [s for s in schemes if set(s.noise) <= set(problem.functionals)]
+    """Return the seconds of a step of a path for each scheme that the problem suits, else infinity.
+
+    The least of the rounds: what else a machine does only adds to it.
+    """
+    suited = [s for s in schemes if problem.offers(s.noise)]
     found = dict(zip((s.label for s in suited), step_seconds(suited, problem), strict=True))
-    return [median(found[s.label]) if s.label in found else math.inf for s in schemes]
+    return [min(found[s.label]) if s.label in found else math.inf for s in schemes]
 
 
 def middle_ratio(new: Sequence[float], old: Sequence[float]) -> tuple[float, float, float]:

@@ -13,7 +13,7 @@ import numpy as np
 
 from sdebench import discovery, ladder
 from sdebench.assess import Levels
-from sdebench.claims import claim_results
+from sdebench.claims import claim_results, settled
 from sdebench.detection import sensitivities
 from sdebench.errors import BadOption
 from sdebench.evidence import Evidence, Provenance
@@ -56,15 +56,19 @@ class Effort:
     looks: int | None
     budget: float | None
 
-    def wants(self, pair: Pair, pairs: Sequence[Pair], levels: Levels, seconds: float) -> bool:
-        """Return whether a pair is to be looked at once more, at the start of a round."""
+    def wants(self, looks: int, settled: bool, all_settled: bool, seconds: float) -> bool:
+        """Return whether a pair is to be looked at once more, at the start of a round.
+
+        `looks` is how often it was, `settled` whether more could change no verdict on it, and
+        `all_settled` on any; `seconds` are those spent.
+        """
         if self.looks is not None:
-            return pair.looks < self.looks
-        if pair.looks == 0:
+            return looks < self.looks
+        if looks == 0:
             return True
         if self.budget is not None:
-            return seconds < self.budget and not all(p.settled(levels) for p in pairs)
-        return pair.looks < MAX_LOOKS and not pair.settled(levels)
+            return seconds < self.budget and not all_settled
+        return looks < MAX_LOOKS and not settled
 
 
 def measure(
@@ -189,7 +193,12 @@ def _run(
     sampled = [pair for pair in applying if pair.sampled]
     while True:
         seconds = time.monotonic() - begin
-        wanted = [pair for pair in sampled if effort.wants(pair, sampled, levels, seconds)]
+        decided = [pair.looks > 0 and settled(pair, levels) for pair in sampled]
+        wanted = [
+            pair
+            for pair, own in zip(sampled, decided, strict=True)
+            if effort.wants(pair.looks, own, all(decided), seconds)
+        ]
         if not wanted:
             return
         count = Count(sum(pair.next_blocks for pair in wanted), progress)

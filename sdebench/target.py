@@ -3,7 +3,7 @@
 import math
 from dataclasses import dataclass
 
-from sdebench.propagate import Estimate
+from sdebench.refine import Estimate
 
 PRECISION = 0.01  # of the number of steps, to which the fewest are found
 

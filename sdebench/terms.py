@@ -162,11 +162,10 @@ def ratio_to_needed(term: Term) -> str:
         return "the term is missing"
     if ratio < 0:
         return "the sign is wrong"
-    if abs(ratio - 1) < 1e-6:
-        return (
-            f"wrong by {abs(ratio - 1):.2g} of its size, as single precision or a rounded "
-            "constant would be"
-        )
-    if abs(ratio - 1) < 0.05:
-        return f"wrong by {abs(ratio - 1):.2g} of its size"
+    # The difference is known to more digits than the ratio of two limits.
+    off = abs(term.difference / term.needed) if term.difference is not None else abs(ratio - 1)
+    if off < 1e-6:
+        return f"wrong by {off:.2g} of its size, as single precision or a rounded constant would be"
+    if off < 0.05:
+        return f"wrong by {off:.2g} of its size"
     return f"{ratio:.3g} times too large" if ratio > 1 else f"only {ratio:.3g} of it"

@@ -15,6 +15,7 @@ import pytest
 
 from sdebench import discovery
 from sdebench.assess import Assessment, Levels
+from sdebench.claims import claim_ruling
 from sdebench.functional import STANDARD
 from sdebench.ladder import DEFAULT
 from sdebench.orders import student_quantile
@@ -90,7 +91,7 @@ def run(seed: int) -> Found:
             for assessment in pair.assessments:
                 note(result, pair, assessment)
         for claim in pair.claims:
-            verdict = pair.claim_ruling(claim, LEVELS).verdict.value
+            verdict = claim_ruling(pair, claim, LEVELS).verdict.value
             result.verdicts[(scheme, problem, claim.kind, verdict)] += 1
     return result
 

@@ -13,6 +13,7 @@ import pytest
 
 from sdebench import discovery, scheme
 from sdebench.assess import Levels
+from sdebench.claims import claim_ruling
 from sdebench.functional import STANDARD
 from sdebench.integrator import Scheme
 from sdebench.ladder import DEFAULT
@@ -56,7 +57,7 @@ def test_an_overclaimed_order_is_never_supported(trap):
         pair = looked_at("overclaimed", trap, seed)
         for claim in pair.claims:
             if claim.kind in (wrong, "weak"):
-                ruling = pair.claim_ruling(claim, levels(pair))
+                ruling = claim_ruling(pair, claim, levels(pair))
                 assert ruling.verdict is not Verdict.SUPPORTED, (seed, ruling)
 
 

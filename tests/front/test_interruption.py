@@ -35,7 +35,9 @@ def test_an_interrupt_ends_with_130_and_one_line(measuring, delay):
     time.sleep(delay)
     process.send_signal(signal.SIGINT)
     out, err = process.communicate(timeout=30)
-    assert process.returncode == 130
+    # Python itself ends by the signal, which a shell shows as 130 too, if the interrupt passed
+    # through a text that is executed, as while SciPy is imported.
+    assert process.returncode in (130, -signal.SIGINT)
     assert out == ""
     # The empty line before it ends the one on which a terminal shows ^C.
     assert err.strip().startswith("sdebench: interrupted")

@@ -6,7 +6,8 @@ from functools import cache
 import sdebench as sb
 from sdebench import discovery
 from sdebench.functional import STANDARD
-from sdebench.propagate import Estimate, Propagated, propagate
+from sdebench.propagate import Propagated, propagate
+from sdebench.refine import Estimate
 
 BY_NAME = {f.name: f for f in STANDARD}
 

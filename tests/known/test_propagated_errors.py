@@ -9,7 +9,7 @@ since then rungs are dropped, a scaled error with the wrong power of its slope o
 import pytest
 
 import sdebench as sb
-from sdebench.propagate import Estimate
+from sdebench.refine import Estimate
 from tests.known.gbm_errors import gbm_errors
 from tests.known.ou_errors import ou_errors
 from tests.known.propagated import estimates, propagated

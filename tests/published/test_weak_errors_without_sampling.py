@@ -15,7 +15,7 @@ from itertools import pairwise
 import numpy as np
 import pytest
 
-from sdebench.propagate import Estimate
+from sdebench.refine import Estimate
 from tests.known.propagated import estimates, propagated
 from tests.tolerance import as_printed
 

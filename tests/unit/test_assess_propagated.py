@@ -12,7 +12,8 @@ from sdebench.assess_propagated import assess_propagated, check_routes, n_compar
 from sdebench.errors import BenchFault
 from sdebench.integrator import Claim
 from sdebench.orders import Errors
-from sdebench.propagate import Estimate, Propagated
+from sdebench.propagate import Propagated
+from sdebench.refine import Estimate
 from sdebench.verdict import Ruling, Verdict
 from tests.tolerance import round_off
 

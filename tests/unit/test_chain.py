@@ -24,6 +24,7 @@ from sdebench.chain import (
     weak_goal,
 )
 from sdebench.functional import STANDARD
+from sdebench.grid import Grid
 from sdebench.transition import NotFinite
 from tests.known.gaussian_errors import ou_end_points
 from tests.known.gbm_errors import gbm_errors
@@ -241,18 +242,21 @@ def test_the_size_of_the_error_is_that_of_independent_errors_of_all_steps(steps)
     """√(N E r² + (N E r)²) of the state that errs most, for Euler on OU in closed form.
 
     From x the error of a step is (x - m)(1 - θh - e^-θh) + σ (dw - I), with I the decayed
-    increment; x is at most two standard deviations from the mean of the end's law, at the first of
-    33 Chebyshev points. Left out is noise beyond four standard deviations, of which the outermost
-    node that is kept is 3.75: at most its E z² there. It would catch a mean that is added in
-    quadrature, or the noise of one step taken as that of all.
+    increment; x is the node furthest from m within two standard deviations of the end's law, of
+    33 nodes on the whole width. Left out is noise beyond four standard deviations, of which the
+    outermost node that is kept is 3.75: at most its E z² there. It would catch a mean that is added
+    in quadrature, or the noise of one step taken as that of all.
     """
     p = sb.problem("ou").params
     theta, sigma, h = p["theta"], p["sigma"], 1 / steps
     kept, whole = math.exp(-theta * h), math.exp(-theta)
     variance = sigma**2 * (h - 2 * (1 - kept) / theta + (1 - kept**2) / (2 * theta))
     mean = (p["x0"] - p["mean"]) * whole
-    reach = 2 * sigma * math.sqrt((1 - whole**2) / (2 * theta)) * math.cos(math.pi / 66)
-    first = (abs(mean) + reach) * (1 - theta * h - kept)
+    reach = 2 * sigma * math.sqrt((1 - whole**2) / (2 * theta))
+    off = Grid.of(sb.problem("ou"), 33, BASE.width).u - p["mean"]
+    furthest = np.abs(off[np.abs(off - mean) <= reach]).max()
+    assert abs(mean) + reach / 2 < furthest
+    first = furthest * (1 - theta * h - kept)
     expected = math.sqrt(steps * (variance + first**2) + (steps * first) ** 2)
     found = Chain(euler, sb.problem("ou"), steps).error_size
     tail = 2 * (3.75 * norm.pdf(3.75) + norm.sf(3.75))  # E z² beyond 3.75

@@ -8,6 +8,7 @@ import pytest
 
 import sdebench as sb
 from sdebench.assess import Levels
+from sdebench.claims import bearing, claim_ruling, decisive, settled
 from sdebench.discovery import find_scheme
 from sdebench.functional import STANDARD
 from sdebench.integrator import Claim
@@ -114,11 +115,11 @@ def test_the_next_look_is_announced(looked_at):
 
 
 def test_a_supported_pair_is_settled(looked_at):
-    assert [looked_at.claim_ruling(c, LEVELS).verdict for c in looked_at.claims] == [
+    assert [claim_ruling(looked_at, c, LEVELS).verdict for c in looked_at.claims] == [
         Verdict.SUPPORTED,
         Verdict.SUPPORTED,
     ]
-    assert looked_at.settled(LEVELS)
+    assert settled(looked_at, LEVELS)
 
 
 def test_a_claim_that_one_step_refutes_is_refuted_and_settled():
@@ -129,22 +130,22 @@ def test_a_claim_that_one_step_refutes_is_refuted_and_settled():
     made = pair(uncorrected)
     made.examine(0.1)
     made.look(LEVELS, 1, lambda: None)
-    ruling = made.claim_ruling(made.claims[0], LEVELS)
+    ruling = claim_ruling(made, made.claims[0], LEVELS)
     assert ruling.verdict is Verdict.REFUTED
     assert ruling.sentence.startswith("One-step evidence")
-    assert made.settled(LEVELS)
+    assert settled(made, LEVELS)
 
 
 def test_rows_that_do_not_count_decide_nothing_unless_none_does(looked_at):
     weak = looked_at.claims[1]
-    rows = looked_at.bearing(weak)
+    rows = bearing(looked_at, weak)
     sampled = looked_at.by_sample
     looked_at.by_sample = {
         row: replace(a, counts=row.functional != 1) for row, a in sampled.items()
     }
-    assert [a.row.functional for a in looked_at.bearing(weak)] == [0, 2]
+    assert [a.row.functional for a in bearing(looked_at, weak)] == [0, 2]
     looked_at.by_sample = {row: replace(a, counts=False) for row, a in sampled.items()}
-    assert len(looked_at.bearing(weak)) == len(rows) == 3
+    assert len(bearing(looked_at, weak)) == len(rows) == 3
 
 
 def test_a_sound_problem_passes_its_check(looked_at):
@@ -185,12 +186,12 @@ def test_what_is_propagated_has_rungs_of_its_own(two_routes):
 def test_the_propagated_errors_decide_where_a_sample_is_their_check(two_routes):
     """It would catch a pair that still judges the sample, at a thousandth of the precision."""
     assert [a.route for a in two_routes.assessments] == ["propagated"] * 4
-    assert two_routes.decisive(two_routes.claims[0]).route == "propagated"
+    assert decisive(two_routes, two_routes.claims[0]).route == "propagated"
 
 
 def test_nothing_is_settled_by_more_paths_where_errors_are_propagated(two_routes):
     assert not any(a.ruling.more_paths_help for a in two_routes.assessments)
-    assert two_routes.settled(LEVELS)
+    assert settled(two_routes, LEVELS)
 
 
 def test_the_routes_are_compared_on_the_rungs_that_both_have(two_routes):
@@ -220,8 +221,7 @@ def test_a_fault_that_a_check_sees_on_a_rung_refutes_a_claim_that_propagation_su
     strong, known = two_routes.rows[0], two_routes.by_sample
     seen = Ruling(Verdict.REFUTED, "1 of 32768 paths end in NaN.", lasting=True)
     two_routes.by_sample = known | {strong: replace(known[strong], ruling=seen)}
-    assert two_routes.claim_ruling(two_routes.claims[0], LEVELS) == seen
-    assert two_routes.claim_ruling(two_routes.claims[1], LEVELS).verdict is Verdict.SUPPORTED
+    assert [claim_ruling(two_routes, claim, LEVELS) for claim in two_routes.claims] == [seen, seen]
 
 
 def test_a_check_that_refutes_an_order_on_coarse_rungs_decides_nothing(two_routes):
@@ -229,7 +229,7 @@ def test_a_check_that_refutes_an_order_on_coarse_rungs_decides_nothing(two_route
     strong, known = two_routes.rows[0], two_routes.by_sample
     refuted = Ruling(Verdict.REFUTED, "Local order 0.5 between 32 and 64 steps.")
     two_routes.by_sample = known | {strong: replace(known[strong], ruling=refuted)}
-    assert two_routes.claim_ruling(two_routes.claims[0], LEVELS).verdict is Verdict.SUPPORTED
+    assert claim_ruling(two_routes, two_routes.claims[0], LEVELS).verdict is Verdict.SUPPORTED
 
 
 def test_a_problem_that_depends_on_time_is_sampled_and_every_row_says_why():
@@ -253,7 +253,7 @@ def test_a_row_that_was_neither_propagated_nor_sampled_says_why_and_what_to_do()
     made.examine(0.1)
     made.propagate(LEVELS, 1)
     assert not made.sampled
-    ruling = made.claim_ruling(made.claims[0], LEVELS)
+    ruling = claim_ruling(made, made.claims[0], LEVELS)
     assert ruling.verdict is Verdict.UNDECIDED
     assert "ramped-noise depends on time" in ruling.sentence
     assert "Leave out --route" in ruling.sentence

@@ -1,25 +1,15 @@
-"""The propagated route: how it refines, what it drops and why, and what it says it knows."""
+"""The propagated route: what it drops and why, and what it says it knows."""
 
 import math
-from dataclasses import asdict, replace
 from functools import cache
 
 import numpy as np
 import pytest
 
 import sdebench as sb
-from sdebench.chain import BASE, MEAN_SQUARE, MOST_NODES, Chain, weak_goal
 from sdebench.functional import STANDARD
-from sdebench.propagate import (
-    KEPT,
-    MOST_DEGREE,
-    PARTS,
-    Propagated,
-    first_resolution,
-    propagate,
-    refined,
-    variations,
-)
+from sdebench.propagate import Propagated, propagate
+from sdebench.refine import KEPT
 from tests.known.gaussian_errors import ou_end_points
 from tests.known.gbm_errors import gbm_errors
 from tests.tolerance import round_off
@@ -196,115 +186,3 @@ def test_a_step_that_raises_is_told_as_the_users():
 
     with pytest.raises(sb.SdebenchError, match="no step today"):
         run(raising)
-
-
-FREE = replace(BASE, kept=math.inf)
-HELD_ONES = replace(BASE, kept=2.0)
-CHANGES = {
-    "nodes": {"nodes", "width"},
-    "degree": {"degree"},
-    "span": {"span", "kept"},
-    "hold": {"kept"},
-    "noise": {"spacing", "n_rest"},
-}
-
-
-def changed(a, b) -> set[str]:
-    return {name for name, value in asdict(a).items() if asdict(b)[name] != value}
-
-
-def test_variations_change_each_part_alone():
-    found = variations(HELD_ONES)
-    assert {part: changed(HELD_ONES, r) for part, r in found.items()} == CHANGES
-    assert list(found) == PARTS
-
-
-def test_a_variation_of_the_span_holds_errors_at_the_same_size():
-    """`kept` is in units of the span; it would catch two parts that change at once."""
-    r = variations(HELD_ONES)["span"]
-    size = HELD_ONES.kept * HELD_ONES.span
-    assert abs(r.kept * r.span - size) <= round_off(size, 4)
-
-
-def test_a_variation_of_what_is_kept_changes_nothing_where_nothing_is_held():
-    found = variations(FREE)
-    assert found["hold"] == FREE
-    assert changed(FREE, found["span"]) == {"span"}
-
-
-def moves(**moved: float) -> dict:
-    """Return relative changes of one goal, part by part."""
-    return {MEAN_SQUARE: np.array([moved.get(part, 0.0) for part in PARTS])}
-
-
-@pytest.mark.parametrize("resolution", [FREE, HELD_ONES], ids=["free", "held"])
-@pytest.mark.parametrize(
-    ("part", "fields"),
-    [
-        ("nodes", {"nodes"}),
-        ("degree", {"degree"}),
-        ("span", {"degree"}),
-        ("hold", {"degree"}),
-        ("noise", {"spacing", "n_rest"}),
-    ],
-)
-def test_the_part_that_moves_is_refined_alone(part, fields, resolution):
-    """All that tells of the polynomials is answered by their degree."""
-    assert changed(resolution, refined(resolution, moves(**{part: 0.1}))) == fields
-
-
-def test_refinement_is_towards_what_is_finer():
-    finer = refined(BASE, moves(nodes=0.1, degree=0.1, noise=0.1))
-    assert finer.nodes > BASE.nodes
-    assert finer.degree > BASE.degree
-    assert finer.spacing < BASE.spacing
-    assert finer.n_rest > BASE.n_rest
-
-
-@pytest.mark.parametrize("part", ["degree", "span", "hold"])
-def test_polynomials_of_the_highest_degree_are_held_if_they_still_move(part):
-    highest = replace(FREE, degree=MOST_DEGREE)
-    held = refined(highest, moves(**{part: 0.1}))
-    assert changed(highest, held) == {"kept"}
-    assert 1 < held.kept < math.inf
-    assert refined(held, moves(**{part: 0.1})) is None
-
-
-def test_parts_that_move_less_than_a_tenth_of_the_worst_are_left_alone():
-    found = refined(BASE, moves(nodes=0.1, noise=0.009))
-    assert changed(BASE, found) == {"nodes"}
-
-
-def test_the_worst_of_all_goals_is_refined():
-    """It would catch a refinement by the first goal alone."""
-    changes = moves(noise=1e-9) | {weak_goal(STANDARD[0], 1.0): moves(nodes=0.1)[MEAN_SQUARE]}
-    assert changed(BASE, refined(BASE, changes)) == {"nodes"}
-
-
-def test_nothing_is_refined_where_nothing_moves():
-    assert refined(BASE, moves()) is None
-    assert refined(BASE, {}) is None
-
-
-@pytest.mark.parametrize("part", PARTS)
-def test_a_change_that_is_no_number_is_refined(part):
-    """It would catch a tenth of infinity as the least change that is."""
-    assert refined(BASE, moves(**{part: math.inf})) is not None
-
-
-def test_refinement_ends():
-    """Where every part moves for ever: within as many rounds as there are levels of all parts."""
-    resolution, rounds = BASE, 0
-    while resolution is not None:
-        last, resolution = resolution, refined(resolution, moves(**dict.fromkeys(PARTS, 1.0)))
-        rounds += 1
-        assert rounds < 10
-    assert last.nodes == MOST_NODES
-    assert last.degree >= MOST_DEGREE
-
-
-@pytest.mark.parametrize(("steps", "degree"), [(1, BASE.degree), (4096, 2)])
-def test_small_errors_begin_with_a_low_degree(steps, degree):
-    """Scaled errors of Euler on GBM are some 0.05 with one step, and 0.001 with 4096."""
-    first = first_resolution(Chain(euler, sb.problem("gbm"), steps))
-    assert first == replace(BASE, degree=degree)

@@ -3,14 +3,12 @@
 import shlex
 from dataclasses import replace
 from itertools import pairwise
-from types import SimpleNamespace
 
 import msgspec
 import numpy as np
 import pytest
 
 import sdebench as sb
-from sdebench.assess import Levels
 from sdebench.study import MAX_LOOKS, Count, Effort
 from sdebench.verdict import Verdict
 
@@ -245,14 +243,16 @@ UNSTABLE = {
 @pytest.mark.parametrize("on", UNSTABLE.values(), ids=UNSTABLE)
 def test_an_honest_scheme_that_is_unstable_on_every_rung_is_undecided(on):
     """|1 - θh| exceeds 1 on all rungs: no order shows, which is no fault of the scheme."""
-    evidence = sb.measure("euler-maruyama", on=on, looks=1, threads=1)
+    evidence = sb.measure("euler-maruyama", on=on, steps=(4, 8, 16, 32), looks=1, threads=1)
     assert {c.verdict for c in evidence.claims} == {Verdict.UNDECIDED}
     assert all("--steps" in c.sentence for c in evidence.claims)
 
 
 @pytest.mark.filterwarnings("error")
 def test_a_scheme_that_is_unstable_has_no_warning_printed():
-    sb.measure("euler-maruyama", on="ou:theta=1000", route="propagated", threads=1)
+    sb.measure(
+        "euler-maruyama", on="ou:theta=1000", steps=(64, 128, 256), route="propagated", threads=1
+    )
 
 
 def test_an_honest_scheme_that_overflows_on_some_paths_only_is_undecided():
@@ -295,14 +295,6 @@ def effort_of(looks=None, budget=None):
     return Effort(looks, budget)
 
 
-LEVELS = Levels(0.95, 0.1, 1)
-
-
-def at(looks: int, settled: bool) -> SimpleNamespace:
-    """Return where a pair stands, as far as an effort asks."""
-    return SimpleNamespace(looks=looks, settled=lambda levels: settled)
-
-
 @pytest.mark.parametrize(
     ("effort", "looks", "settled", "seconds", "wanted"),
     [
@@ -320,13 +312,11 @@ def at(looks: int, settled: bool) -> SimpleNamespace:
     ],
 )
 def test_a_pair_is_looked_at_again_as_the_effort_says(effort, looks, settled, seconds, wanted):
-    standing = at(looks, settled)
-    assert effort.wants(standing, [standing], LEVELS, seconds) is wanted
+    assert effort.wants(looks, settled, settled, seconds) is wanted
 
 
 def test_within_a_budget_every_pair_is_looked_at_until_all_are_settled():
-    decided, open_ = at(1, True), at(1, False)
-    assert Effort(None, 5.0).wants(decided, [decided, open_], LEVELS, 1.0)
+    assert Effort(None, 5.0).wants(looks=1, settled=True, all_settled=False, seconds=1.0)
 
 
 def test_a_count_reports_what_is_done_of_the_total():

@@ -4,7 +4,7 @@ import math
 
 import pytest
 
-from sdebench.propagate import Estimate
+from sdebench.refine import Estimate
 from sdebench.target import (
     PRECISION,
     Known,
