@@ -37,7 +37,7 @@ def test_every_claim_of_a_scheme_is_supported(scheme, problem, pair_applies):
     assert {s: v for s, v in found.items() if v is not sb.Verdict.SUPPORTED} == {}
 
 
-@pytest.mark.parametrize("horizon", [1e-3, 0.05])
+@pytest.mark.parametrize("horizon", [1e-3, pytest.param(0.05, marks=pytest.mark.calibration)])
 def test_no_claim_is_refuted_over_a_short_horizon(scheme, problem, pair_applies, horizon):
     """There the controls explain nearly all of an error: round-off is not to be taken for it."""
     if not pair_applies(scheme, problem):

@@ -56,21 +56,12 @@ def pairs(table):
     return named([(name, on) for name, problems in table.items() for on in problems])
 
 
-SLOW = [  # seconds each, since they keep far from the path or bend where the drift vanishes
-    ("two_point_noise", "ou"),
-    ("two_point_noise_by_a_choice", "gbm"),
-    ("tamed_by_root_h", "ou"),
-    ("tamed_by_root_h", "tanh"),
-]
-
-
 def fewer(table):
-    """Return the pairs, with slow ones and half of those on curved problems as calibrations."""
+    """Return the pairs; all but one of each integrator, on a problem in turn, are calibrations."""
     found = []
     for row, (name, problems) in enumerate(table.items()):
-        for on in problems:
-            odd = on in CURVED and (row + CURVED.index(on)) % 2
-            marks = [pytest.mark.calibration] if odd or (name, on) in SLOW else []
+        for column, on in enumerate(problems):
+            marks = [] if column == row % len(problems) else [pytest.mark.calibration]
             found.append(pytest.param(name, on, id=f"{name}-on-{on}", marks=marks))
     return {"argvalues": found}
 

@@ -1,5 +1,5 @@
-"""What sampling alone decides, it decides on every seed: 20 of them, one in the fast set,
-beside the default one of `test_mutants.py`.
+"""What sampling alone decides, it decides on every seed: 20 of them, as a calibration, beside
+the default one of `test_mutants.py`.
 
 The faults are many times what 32768 paths resolve: the bounds on each order stay below its claim
 by four times their width or more. What is propagated depends on no seed, its check does, with a
@@ -14,25 +14,21 @@ import sdebench as sb
 from tests.mutants import hidden
 from tests.mutants.catalogue import SAMPLED, Mutant, measured, refutations
 
-SEEDS = [
-    pytest.param(range(2, 3), id="seed-2"),
-    pytest.param(range(3, 21), id="seeds-3-to-20", marks=pytest.mark.calibration),
-]
+pytestmark = pytest.mark.calibration
+SEEDS = range(2, 21)
 
 
-@pytest.mark.parametrize("seeds", SEEDS)
 @pytest.mark.parametrize("mutant", hidden.family.mutants, ids=lambda mutant: mutant.label)
-def test_a_fault_that_only_whole_paths_meet_is_refuted_on_every_seed(mutant: Mutant, seeds: range):
-    for seed in seeds:
+def test_a_fault_that_only_whole_paths_meet_is_refuted_on_every_seed(mutant: Mutant):
+    for seed in SEEDS:
         evidence = measured(mutant.scheme, mutant.on, seed=seed, route="sampled")
         assert evidence.verdict is sb.Verdict.REFUTED
         assert set(mutant.says) <= set(refutations(evidence)[SAMPLED])
 
 
-@pytest.mark.parametrize("seeds", SEEDS)
-def test_a_registered_scheme_is_supported_on_every_seed(scheme, problem, pair_applies, seeds):
+def test_a_registered_scheme_is_supported_on_every_seed(scheme, problem, pair_applies):
     if not pair_applies(scheme, problem):
         pytest.skip(f"{problem.name} lacks what {scheme.name} steps by")
-    for seed in seeds:
+    for seed in SEEDS:
         evidence = measured(scheme, problem, seed=seed, looks=None)
         assert evidence.verdict is sb.Verdict.SUPPORTED
