@@ -68,8 +68,9 @@ class Rung:
 
     def _refine(self, wanted: list[Goal], resolution: Resolution) -> None:
         for _ in range(ROUNDS):
+            before = dict(self.found)
             changes = self._changes(wanted, resolution)
-            wanted = [goal for goal in wanted if not self._final(goal)]
+            wanted = [goal for goal in wanted if not self._final(goal, before.get(goal))]
             finer = refined(resolution, {goal: changes[goal] for goal in wanted})
             if not wanted or finer is None:
                 break
@@ -131,9 +132,12 @@ class Rung:
         grid = self.chain.grid(goal.kinks, resolution)
         return all(grid.spacing_near(f.place) < f.length for f in self.chain.focuses(goal.kinks))
 
-    def _final(self, goal: Goal) -> bool:
-        """Whether an estimate is good enough, or as good as round-off lets it be."""
+    def _final(self, goal: Goal, before: Estimate | None) -> bool:
+        """Whether an estimate is good enough, or as good as round-off lets it be, or explodes."""
         found = self.found[goal]
+        explodes = found.uncertainty > self._as_measure(self.scale, goal)
+        if before is not None and explodes and found.uncertainty > 0.5 * before.uncertainty:
+            return True
         least = max(self._as_measure(FINE * self.scale, goal), 2 * self._lost(goal, found.value))
         enough = max(GOOD * abs(found.value), least)
         return found.dropped in (None, HIDDEN) and found.uncertainty <= enough

@@ -8,6 +8,8 @@ from sdebench.problem import Problem
 from tests.known.gaussian_errors import EndPoints, ou_end_points, ramped_noise_end_points
 from tests.known.gbm_errors import gbm_errors
 
+CLOSED_FORMS = ("gbm", "ou", "ramped-noise")
+
 
 def errors(scheme: str, problem: Problem, steps: Sequence[int]) -> dict[str, np.ndarray]:
     """Return the mean-square error and the weak errors that are known, rung by rung.

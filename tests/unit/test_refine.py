@@ -162,8 +162,16 @@ def test_what_round_off_hides_is_not_refined(monkeypatch):
     assert max(r.degree for r in tried) <= BASE.degree + 1
 
 
-def test_what_refinement_mends_is_refined(monkeypatch):
-    """So that the one above is not merely left as it began."""
-    found, tried = measured("gbm:mu=2,sigma=1", 4, monkeypatch)
+def test_what_explodes_is_refined_but_once(monkeypatch):
+    """|1 - θh|^16 is 61^16, from which no polynomial in a scaled error is of use."""
+    found, tried = measured("ou:theta=1000", 16, monkeypatch)
+    assert {e.dropped for e in found.values()} == {"the nodes do not resolve it"}
+    assert max(r.nodes for r in tried) == round(1.4 * BASE.nodes)
+
+
+@pytest.mark.parametrize(("on", "steps"), [("gbm:mu=2,sigma=1", 4), ("gbm:mu=2,sigma=0.1", 512)])
+def test_what_refinement_mends_is_refined(on, steps, monkeypatch):
+    """So that the two above are not merely left as they began; the second explodes at first."""
+    found, tried = measured(on, steps, monkeypatch)
     assert {name: e.dropped for name, e in found.items()} == dict.fromkeys(found)
     assert max(r.nodes for r in tried) > BASE.nodes
