@@ -214,7 +214,7 @@ def summary(
             if which
         ]
         head = f"{new} has {' and '.join(said)}"
-    sentence = f"{head}: {new}'s is {finest.ratio:.3g} times {old}'s with {finest.steps} steps"
+    sentence = f"{head}: {new}'s is {finest.ratio:.4g} times {old}'s with {finest.steps} steps"
     if old_constant is not None and new_constant is not None:
         if old_constant.order == new_constant.order:
             ratio = new_constant.value / old_constant.value if old_constant.value else math.nan
