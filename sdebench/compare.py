@@ -214,11 +214,12 @@ def summary(
             if which
         ]
         head = f"{new} has {' and '.join(said)}"
-    sentence = f"{head}: {new}'s is {finest.ratio:.4g} times {old}'s with {finest.steps} steps"
+    sentence = f"{head}: {new}'s is {_times(finest.ratio)} times {old}'s with {finest.steps} steps"
     if old_constant is not None and new_constant is not None:
         if old_constant.order == new_constant.order:
             ratio = new_constant.value / old_constant.value if old_constant.value else math.nan
-            sentence += f", in the limit {ratio:.4g} times (both of order {old_constant.order:g})"
+            both = f"both of order {old_constant.order:g}"
+            sentence += f", in the limit {_times(ratio)} times ({both})"
         else:
             sentence += f"; orders {old_constant.order:g} and {new_constant.order:g}"
     return f"{sentence}. A step costs {cost[0]:.2g} times as much ({cost[1]:.2g} to {cost[2]:.2g})."
@@ -226,3 +227,8 @@ def summary(
 
 def _listed(steps: Sequence[int]) -> str:
     return ", ".join(map(str, steps))
+
+
+def _times(ratio: float) -> str:
+    """Return a ratio to three digits, near 1 those after the point."""
+    return f"{ratio:.3f}" if 0.9 < ratio < 1.1 else f"{ratio:.3g}"

@@ -130,7 +130,7 @@ def test_errors_that_are_the_same_are_said_not_to_differ(on_gbm):
     """The mean of either is x0 (1 + μh)^N: no bounds may exclude the ratio 1."""
     said = on_gbm["mean"].sentence
     assert said.startswith("The errors of euler-maruyama and milstein do not differ beyond their")
-    assert "in the limit 1 times (both of order 1)" in said
+    assert "in the limit 1.000 times (both of order 1)" in said
 
 
 @dataclass(frozen=True)
