@@ -1,9 +1,11 @@
 """Numbers as people read them: cut where the uncertainty begins."""
 
 import math
+import re
 from decimal import Decimal
 
 MOST_DIGITS = 8  # after the point, before a power of ten is split off
+SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 
 
 def with_uncertainty(value: float | None, half_width: float | None) -> str:
@@ -29,6 +31,19 @@ def with_uncertainty(value: float | None, half_width: float | None) -> str:
     digits = max(exponent - place, 0)
     scaled, spread = (Decimal(x).scaleb(-exponent) for x in (value, half_width))
     return f"({scaled:.{digits}f} ± {spread:.{digits}f})e{exponent:+03d}"
+
+
+def apart(value: float, half_width: float | None) -> tuple[str, str]:
+    """Return a value cut as `with_uncertainty` does it, and its uncertainty to as many digits.
+
+    >>> apart(3.2148e-5, 4.1e-7)
+    ('3.21e-05', '4e-07')
+    """
+    shown = with_uncertainty(value, half_width)
+    inside, _, power = shown.partition(")") if shown.startswith("(") else (shown, "", "")
+    first, _, second = inside.lstrip("(").partition(" ± ")
+    digits = len(second.replace(".", "").strip("0")) - 1
+    return first + power, f"{half_width:.{max(digits, 0)}e}" if second else ""
 
 
 def order(value: float | None) -> str:
@@ -87,3 +102,46 @@ def ratio(value: float | None, low: float | None, high: float | None) -> str:
 def claimed(value: float | None) -> str:
     """Return a claimed order, or '' for none."""
     return "" if value is None else f"{value:g}"
+
+
+def superscript(exponent: int) -> str:
+    """Return a whole number in superscript digits.
+
+    >>> superscript(-12)
+    '⁻¹²'
+    """
+    return str(exponent).translate(SUPERSCRIPTS)
+
+
+def typeset(text: str) -> str:
+    """Return numbers in a text with real minus signs and powers of ten.
+
+    >>> typeset("(-3.21 ± 0.04)e-05")
+    '(−3.21 ± 0.04) × 10⁻⁵'
+    """
+    powers = re.sub(r"(?<=[\d)])e([+-]\d+)", lambda m: f" × 10{superscript(int(m[1]))}", text)
+    return re.sub(r"(?<![\w.])-(?=\d)", "−", powers)
+
+
+def measured_order(value: float | None, low: float | None, high: float | None, exact: bool) -> str:
+    """Return an order as '0.500 ± 0.002', three to four digits after the point.
+
+    The half-width is the larger of the two; a bound that is missing is said.
+
+    >>> measured_order(0.50021, 0.4984, 0.5013, False)
+    '0.500 ± 0.002'
+    >>> measured_order(1.5, 1.4, None, False)
+    '1.500, at least 1.400'
+    """
+    if exact:
+        return "exact"
+    if value is None:
+        return ""
+    if high is None or low is None:
+        end = "" if low is None else f", at least {low:.3f}"
+        return f"{order(value)}{end}"
+    width = max(value - low, high - value, 0.0)
+    digits = min(max(-math.floor(math.log10(width)), 3), 4) if width > 0 else 4
+    shown = f"{value:.{digits}f}"
+    rounded = f"{math.ceil(width * 10**digits) / 10**digits:.{digits}f}"
+    return f"{shown} ± {rounded}" if width >= 0.5 * 10**-digits else shown

@@ -74,12 +74,20 @@ def cli() -> None:
 @click.option("--looks", type=int, metavar="K", help="Look exactly K times.")
 @click.option("--threads", type=int, help="Threads; no result depends on it.")
 @click.option("--save", type=click.Path(path_type=Path), metavar="EVIDENCE.json")
+@click.option(
+    "--report",
+    "folder",
+    type=click.Path(path_type=Path),
+    metavar="DIR",
+    help="Write the convergence report into a folder.",
+)
 @click.option("--quiet", is_flag=True, help="Print nothing but what is not supported.")
 def measure(
     schemes: tuple[str, ...],
     problems: tuple[str, ...],
     functionals: tuple[str, ...],
     save: Path | None,
+    folder: Path | None,
     quiet: bool,
     **options: Any,
 ) -> None:
@@ -94,12 +102,20 @@ def measure(
     tell_faults()
     if save is not None:
         check_writable(save)
+    if folder is not None:
+        from sdebench.reports.folder import check_folder
+
+        check_folder(folder)
     with terminal.progress_bar(terminal.console(sys.stderr), quiet) as progress:
         evidence = run(
             schemes or None, problems or None, functionals=functionals, progress=progress, **options
         )
     if save is not None:
         evidence.save(save)
+    if folder is not None:
+        from sdebench.reports.report import write_report
+
+        write_report([evidence], folder)
     show = terminal.show_sentences if quiet else terminal.show_evidence
     show(evidence, terminal.console())
     sys.exit(evidence.exit_code)
@@ -188,6 +204,33 @@ def catalogue() -> None:
     for table in tables.catalogue(*found, STANDARD):
         terminal.show_table(table, out)
         out.print()
+
+
+@cli.command()
+@click.argument(
+    "files",
+    metavar="EVIDENCE.json...",
+    nargs=-1,
+    required=True,
+    type=click.Path(path_type=Path),
+)
+@click.option(
+    "--out",
+    "folder",
+    metavar="DIR",
+    required=True,
+    type=click.Path(path_type=Path),
+    help="The folder of the report: a new one, an empty one, or that of an earlier report.",
+)
+def report(files: tuple[Path, ...], folder: Path) -> None:
+    """Write the convergence report of evidence files; nothing is measured again.
+
+    A page, report.html, with a summary and every figure and table as files beside it.
+    """
+    from sdebench.evidence import load
+    from sdebench.reports.report import write_report
+
+    click.echo(write_report([load(file) for file in files], folder))
 
 
 @cli.command()

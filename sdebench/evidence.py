@@ -58,7 +58,10 @@ class Term(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Cost(msgspec.Struct, frozen=True, kw_only=True):
-    """What a measurement took; rows made from one sample name the same `sample`."""
+    """What a measurement took; rows made from one sample name the same `sample`.
+
+    `step_seconds` is what one step of one path takes on one thread, with drawing its noise.
+    """
 
     sample: str
     seconds: float
@@ -66,6 +69,7 @@ class Cost(msgspec.Struct, frozen=True, kw_only=True):
     paths: Count = 0
     looks: Count = 0
     threads: Count = 1
+    step_seconds: float | None = None
 
 
 class DetectionLimit(msgspec.Struct, frozen=True, kw_only=True):
@@ -143,7 +147,10 @@ class ClaimResult(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Provenance(msgspec.Struct, frozen=True, kw_only=True):
-    """How the evidence was made, enough to make it again to the bit."""
+    """How the evidence was made, enough to make it again to the bit.
+
+    `revision` is that of the repository in the working directory, if there is one.
+    """
 
     sdebench: str
     numpy: str
@@ -159,6 +166,7 @@ class Provenance(msgspec.Struct, frozen=True, kw_only=True):
     budget: float | None
     threads: int
     seconds: float
+    revision: str | None = None
 
 
 class Evidence(msgspec.Struct, frozen=True, kw_only=True):

@@ -75,6 +75,7 @@ class Pair:
         self.agreement: dict[Row, str] = {}
         self.doubt: Ruling | None = None
         self.propagation_seconds = 0.0
+        self.step_seconds: float | None = None
         self.local: Local | None = None
         self.fingerprint: list[bytes] = []
 

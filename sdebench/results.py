@@ -201,7 +201,12 @@ def _ruling(
 def _cost(pair: Pair, a: Assessment, threads: int) -> Cost:
     if a.route == "propagated":
         seconds = pair.propagation_seconds
-        return Cost(sample=f"{pair.label}, propagated", seconds=seconds, threads=threads)
+        return Cost(
+            sample=f"{pair.label}, propagated",
+            seconds=seconds,
+            threads=threads,
+            step_seconds=pair.step_seconds,
+        )
     return Cost(
         sample=pair.label,
         seconds=pair.sample.seconds,
@@ -209,6 +214,7 @@ def _cost(pair: Pair, a: Assessment, threads: int) -> Cost:
         paths=pair.sample.n_paths,
         looks=pair.looks,
         threads=threads,
+        step_seconds=pair.step_seconds,
     )
 
 

@@ -31,7 +31,9 @@ from sdebench.request import (
     processors,
 )
 from sdebench.results import results
+from sdebench.revision import revision
 from sdebench.sample import Plan
+from sdebench.step_cost import step_costs
 from sdebench.verdict import overall
 
 MAX_LOOKS = 7  # two million paths on the last look
@@ -130,6 +132,7 @@ def measure(
     n_route_checks = sum(pair.n_route_checks for pair in sampled)
     for pair in sampled:
         pair.check(len(sampled) * len(chosen), n_route_checks)
+    _time_steps(pairs)
     claims = [claim for pair in pairs for claim in claim_results(pair, levels)]
     problems = {pair.plan.problem.label: pair.plan.problem for pair in pairs if pair.measurable}
     found = {label: sensitivities(problem, chosen) for label, problem in problems.items()}
@@ -163,6 +166,7 @@ def measure(
             budget=budget,
             threads=n_threads,
             seconds=time.monotonic() - begin,
+            revision=revision(),
         ),
         claims=claims,
         results=rows,
@@ -178,6 +182,19 @@ def _versions() -> dict[str, str]:
         "python": platform.python_version(),
         "platform": platform.platform(),
     }
+
+
+def _time_steps(pairs: Sequence[Pair]) -> None:
+    """Time a step of every measurable pair, schemes on one problem in turn."""
+    by_problem: dict[str, list[Pair]] = {}
+    for pair in pairs:
+        if pair.measurable:
+            by_problem.setdefault(pair.plan.problem.label, []).append(pair)
+    for own in by_problem.values():
+        problem = own[0].plan.problem
+        costs = step_costs([pair.plan.scheme for pair in own], problem)
+        for pair, cost in zip(own, costs, strict=True):
+            pair.step_seconds = cost
 
 
 def _run(

@@ -1,6 +1,7 @@
 """A run that is interrupted, killed, or whose reader goes away."""
 
 import signal
+import subprocess
 import time
 
 import pytest
@@ -30,11 +31,18 @@ def measuring(started, traced, folder):
 
 
 @pytest.mark.parametrize("delay", [0.0, 1.0], ids=["at-the-start", "while-sampling"])
-def test_an_interrupt_ends_with_130_and_one_line(measuring, delay):
-    process = measuring()
-    time.sleep(delay)
-    process.send_signal(signal.SIGINT)
-    out, err = process.communicate(timeout=30)
+def test_an_interrupt_ends_with_130_and_one_line(measuring, delay, folder):
+    for _ in range(3):
+        process = measuring()
+        time.sleep(delay)
+        process.send_signal(signal.SIGINT)
+        try:
+            out, err = process.communicate(timeout=10)
+            break
+        except subprocess.TimeoutExpired as running:
+            # Python drops an interrupt that it meets while it cleans up after an object.
+            assert b"Exception ignored in" in (running.stderr or b"")
+            (folder / "called").unlink()
     # Python itself ends by the signal, which a shell shows as 130 too, if the interrupt passed
     # through a text that is executed, as while SciPy is imported.
     assert process.returncode in (130, -signal.SIGINT)

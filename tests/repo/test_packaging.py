@@ -104,7 +104,7 @@ def test_the_wheel_holds_exactly_the_modules_of_the_repository(root, wheel_names
     wanted = {
         f"{place}/{path.relative_to(root / top).as_posix()}"
         for top, place in places.items()
-        for path in (root / top).rglob("*.py")
+        for path in (*(root / top).rglob("*.py"), *(root / top).glob("templates/*"))
     }
     assert {n for n in wheel_names if n.startswith("sdebench/")} == wanted | {"sdebench/py.typed"}
 

@@ -51,6 +51,8 @@ def test_the_blocks_are_those_that_are_tested_here():
         ("run", "example"),
         ("run", "advice"),
         ("run", "python"),
+        ("run", "report"),
+        ("run", "figures"),
     }
 
 
@@ -94,6 +96,19 @@ def test_the_python_example_runs_and_saves_its_evidence(desk):
     assert (done.returncode, done.stderr) == (0, "")
     assert done.stdout.startswith("supported 0.99")
     assert json.loads((folder / "evidence.json").read_text())["verdict"] == "supported"
+
+
+def test_the_desks_report_is_written_and_its_figure_restyled(desk):
+    folder, environment = desk
+    for command in (
+        ["sh", "-ec", BLOCKS["run", "report"]],
+        [sys.executable, "-c", BLOCKS["run", "figures"]],
+    ):
+        done = subprocess.run(command, cwd=folder, env=environment, capture_output=True, text=True)
+        assert (done.returncode, done.stderr) == (0, "")
+    page = (folder / "report" / "report.html").read_text()
+    assert "All 4 claims of 1 scheme on 2 problems are supported." in page
+    assert (folder / "convergence.pdf").read_bytes().startswith(b"%PDF")
 
 
 def test_the_command_that_measures_ends_in_a_valid_one():

@@ -191,3 +191,10 @@ def test_rungs_before_a_change_of_sign_do_not_count():
     row = next(r for r in evidence.results if r.functional == "second-moment")
     assert [rung.error > 0 for rung in row.rungs] == [True, False, False, False, False]
     assert [rung.counts for rung in row.rungs] == [False, True, True, True, True]
+
+
+def test_what_a_step_takes_stands_with_the_errors_it_is_the_cost_of(supported_evidence):
+    """Tens of nanoseconds; it would catch the time of a whole block, or of the whole study."""
+    rows = [row for row in supported_evidence.results if row.kind in ("strong", "weak")]
+    assert len({row.cost.step_seconds for row in rows}) == 1
+    assert 0 < rows[0].cost.step_seconds < supported_evidence.provenance.seconds / 1000

@@ -1,0 +1,245 @@
+"""How a row of evidence is drawn on axes: marks, bars, lines, the claimed slope, the key."""
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from sdebench.reports import numbers, style
+from sdebench.reports.sections import Section
+
+from sdebench.evidence import Result, Rung
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
+
+ROOM = 0.5  # orders above and below what is claimed or measured
+HEADROOM = 0.15  # of the logarithmic height, for the key
+LINE = 0.062  # of the height of the axes, from one line of the key to the next
+LEAST = 0.2  # of an error, to which the lower end of a bar that reaches 0 is drawn
+
+
+@dataclass(frozen=True)
+class Drawn:
+    """How the errors of a row are drawn: strong ones filled and on a line, weak ones hollow."""
+
+    row: Result
+    label: str
+    colour: str
+    mark: str
+
+    @property
+    def filled(self) -> bool:
+        """Whether the mark is."""
+        return self.row.kind == "strong"
+
+    @property
+    def face(self) -> str:
+        """The colour inside of the mark."""
+        return self.colour if self.filled else "none"
+
+    @property
+    def line(self) -> str:
+        """The style of the line."""
+        return "-" if self.filled else "--"
+
+    @property
+    def rungs(self) -> list[Rung]:
+        """The rungs that count."""
+        return [rung for rung in self.row.rungs if rung.error and rung.counts]
+
+    @property
+    def errors(self) -> list[float]:
+        """The sizes of the errors of these rungs."""
+        return [abs(rung.error or 0.0) for rung in self.rungs]
+
+
+def label(row: Result) -> str:
+    """Return what the errors of a row are of: 'strong', or 'weak, mean'."""
+    what = row.functional or ("largest on the grid" if row.at == "grid" else "")
+    return f"{row.kind}, {what}" if what else row.kind
+
+
+def new_axes(x: str, y: str) -> "tuple[Figure, Axes]":
+    """Return a figure with axes of these labels, in the bench's style."""
+    from matplotlib import rc_context
+    from matplotlib.figure import Figure
+
+    with rc_context(style.SETTINGS):
+        figure = Figure(figsize=(style.WIDTH, style.HEIGHT))
+        axes = figure.add_axes(style.FRAME)
+        axes.set_xlabel(x)
+        axes.set_ylabel(y)
+        axes.set_axisbelow(True)
+    return figure, axes
+
+
+def of_rows(rows: Sequence[Result]) -> list[Drawn]:
+    """Return how rows of one scheme are drawn: the strong error, and the others in turn."""
+    found, others = [], 0
+    for row in rows:
+        if row.kind == "strong" and row.at != "grid":
+            look = style.STRONG
+        else:
+            look = style.WEAK[others % len(style.WEAK)]
+            others += 1
+        found.append(Drawn(row, label(row), *look))
+    return found
+
+
+def of_schemes(sections: Sequence[Section]) -> list[Drawn]:
+    """Return how the first row of each kind of several schemes is drawn: schemes in turn."""
+    return [
+        Drawn(row, f"{section.scheme}, {label(row)}", *style.SCHEMES[n % len(style.SCHEMES)])
+        for n, section in enumerate(sections)
+        for row in first_of_each_kind(section.measured)
+    ]
+
+
+def first_of_each_kind(rows: Sequence[Result]) -> list[Result]:
+    """Return the first strong row and the first weak one."""
+    return list({row.kind: row for row in reversed(rows)}.values())[::-1]
+
+
+def draw_errors(axes: "Axes", drawn: Drawn) -> None:
+    """Draw the errors of a row that count, with their bars."""
+    rungs, errors = drawn.rungs, drawn.errors
+    if rungs:
+        widths = [rung.uncertainty or 0.0 for rung in rungs]
+        low = [min(w, (1 - LEAST) * error) for error, w in zip(errors, widths, strict=True)]
+        axes.errorbar(
+            [rung.h for rung in rungs],
+            errors,
+            yerr=[low, widths],
+            color=drawn.colour,
+            marker=drawn.mark,
+            markerfacecolor=drawn.face,
+            linestyle="none",
+            elinewidth=1.0,
+            capsize=2.0,
+        )
+
+
+def draw_rest(axes: "Axes", drawn: Drawn) -> None:
+    """Draw as crosses the errors of a row that do not count."""
+    rest = {rung.h: abs(rung.error) for rung in drawn.row.rungs if rung.error and not rung.counts}
+    if rest:
+        axes.plot(list(rest), list(rest.values()), color=style.MUTED, marker="x", linestyle="none")
+
+
+def draw_fit(axes: "Axes", drawn: Drawn) -> None:
+    """Draw the line of the measured order through the finest rung that counts."""
+    order, rungs = drawn.row.order, drawn.rungs
+    if order is None or len(rungs) < 2:
+        return
+    finest = min(rungs, key=lambda rung: rung.h)
+    h = [max(rung.h for rung in rungs), finest.h]
+    line = [abs(finest.error or 0.0) * (each / finest.h) ** order for each in h]
+    axes.plot(h, line, color=drawn.colour, linestyle=drawn.line, linewidth=0.9)
+
+
+def draw_guide(axes: "Axes", row: Result) -> None:
+    """Draw the claimed slope, a little below the errors."""
+    rungs = [rung for rung in row.rungs if rung.error and rung.counts]
+    if row.claimed is None or len(rungs) < 2:
+        return
+    rungs = sorted(rungs, key=lambda rung: rung.h)[:3]
+    base = min(abs(rung.error or 0.0) * (rungs[0].h / rung.h) ** row.claimed for rung in rungs)
+    h = [rungs[0].h, rungs[-1].h]
+    line = [base * 0.35 * (each / h[0]) ** row.claimed for each in h]
+    axes.plot(h, line, color=style.INK, linestyle=":", linewidth=1.2)
+    axes.annotate(
+        f"claimed {numbers.claimed(row.claimed)}",
+        (h[1], line[1]),
+        xytext=(4, -3),
+        textcoords="offset points",
+        fontsize=8,
+        color=style.INK,
+        verticalalignment="top",
+    )
+
+
+def draw_claims(axes: "Axes", claimed: Sequence[float], shown: Sequence[float]) -> None:
+    """Draw the claimed orders, and have the axis hold them and the orders that are near."""
+    for order in claimed:
+        axes.axhline(order, color=style.INK, linestyle=":", linewidth=1.0)
+        axes.annotate(
+            f"claimed {numbers.claimed(order)}",
+            (0.995, order),
+            xycoords=("axes fraction", "data"),
+            xytext=(-2, 2),
+            textcoords="offset points",
+            fontsize=8,
+            color=style.INK,
+            horizontalalignment="right",
+        )
+    near = [order for order in shown if not claimed or abs(order - claimed[-1]) < 4 * ROOM]
+    ends = [*claimed, *near]
+    axes.set_ylim(min(ends) - ROOM, max(ends) + ROOM)
+
+
+def logarithmic(axes: "Axes") -> None:
+    """Make both axes logarithmic, with room above for the key."""
+    if not axes.lines:
+        say_nothing(axes)
+    axes.set_xscale("log")
+    axes.set_yscale("log")
+    powers_of_ten(axes.xaxis)
+    powers_of_ten(axes.yaxis)
+    low, high = axes.get_ylim()
+    axes.set_ylim(low, high * (high / low) ** HEADROOM)
+
+
+def say_nothing(axes: "Axes") -> None:
+    """Say that there is nothing to draw, on axes that are still fit for logarithms."""
+    axes.set_xlim(1e-3, 1.0)
+    axes.set_ylim(1e-3, 1.0)
+    said = "no error that counts"
+    axes.text(0.5, 0.5, said, transform=axes.transAxes, color=style.INK, ha="center")
+
+
+def powers_of_ten(axis: object) -> None:
+    """Mark an axis at powers of ten, and between where it has few."""
+    from matplotlib.axis import Axis
+    from matplotlib.ticker import FuncFormatter, LogLocator, NullLocator
+
+    assert isinstance(axis, Axis)
+    low, high = sorted(axis.get_view_interval())
+    between = (1.0, 2.0, 5.0) if high < 20 * low else (1.0,)
+    axis.set_major_locator(LogLocator(10, subs=between, numticks=9))
+    axis.set_minor_locator(NullLocator())
+    axis.set_major_formatter(FuncFormatter(lambda value, _: _power(value)))
+
+
+def _power(value: float) -> str:
+    exponent = math.floor(math.log10(value) + 1e-9)
+    first = round(value / 10.0**exponent)
+    if abs(exponent) <= 1:
+        return f"{value:g}"
+    return f"{f'{first} × ' if first != 1 else ''}10{numbers.superscript(exponent)}"
+
+
+def draw_key(axes: "Axes", drawn: Sequence[Drawn], top: bool = True) -> None:
+    """Say in a corner what each mark is; a Matplotlib legend takes as long as all the rest."""
+    first = 0.965 if top else 0.035 + LINE * (len(drawn) - 1)
+    for n, each in enumerate(drawn):
+        y = first - LINE * n
+        axes.plot(
+            [0.03],
+            [y],
+            transform=axes.transAxes,
+            color=each.colour,
+            marker=each.mark,
+            markerfacecolor=each.face,
+            linestyle="none",
+        )
+        axes.text(
+            0.055,
+            y,
+            each.label,
+            transform=axes.transAxes,
+            fontsize=8.5,
+            color=style.INK,
+            verticalalignment="center",
+        )

@@ -1,0 +1,146 @@
+"""The report of evidence files: a page, a summary, and every figure and table as files.
+
+All is made before the first file is put in place; what a folder held before stays until then.
+"""
+
+import os
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from functools import partial
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from sdebench.reports import export, figures, render, summary
+from sdebench.reports.errors_table import errors_table
+from sdebench.reports.folder import check_folder, put
+from sdebench.reports.inline import inline_svg
+from sdebench.reports.page import Shown, page
+from sdebench.reports.sections import Section, by_problem, sections
+from sdebench.reports.tables import Table, terms_table
+
+from sdebench.evidence import Evidence
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+
+@dataclass(frozen=True)
+class Planned:
+    """A figure to be drawn: the name of its files, the call, and what is said of it."""
+
+    name: str
+    drawing: Callable[[], "Figure"]
+    caption: str
+    description: str
+
+
+def report(evidences: Sequence[Evidence]) -> dict[str, bytes]:
+    """Return the files of the report on some evidence, by their paths in its folder."""
+    found = sections(evidences)
+    problems = by_problem(found)
+    of_pairs = {section.name: _figures(section) for section in found}
+    of_problems = {problem: _side_by_side(problem, own) for problem, own in problems.items()}
+    plans = [plan for own in (*of_pairs.values(), *of_problems.values()) for plan in own]
+    contents, shown = _drawn(plans)
+    tables = {section.name: _tables(section, contents) for section in found}
+    claims = summary.matrix(found)
+    _add(contents, "claims", claims, export.table_csv(claims))
+    contents["summary.md"] = summary.summary(found).encode()
+    contents["report.html"] = page(
+        found,
+        [evidence.provenance for evidence in evidences],
+        {name: [shown[plan.name] for plan in own] for name, own in of_pairs.items()},
+        tables,
+        [(name, [shown[plan.name] for plan in own]) for name, own in of_problems.items() if own],
+    ).encode()
+    return contents
+
+
+def write_report(evidences: Sequence[Evidence], out: str | os.PathLike[str]) -> Path:
+    """Write the report into the folder `out` and return the path of its page.
+
+    Raises `CannotWrite`, before anything is changed, if the folder holds what is not ours.
+    """
+    folder = Path(out)
+    check_folder(folder)
+    put(folder, report(evidences))
+    return folder / "report.html"
+
+
+def _drawn(plans: Sequence[Planned]) -> tuple[dict[str, bytes], dict[str, Shown]]:
+    """Return the files of all figures, and how each is shown on the page."""
+    contents: dict[str, bytes] = {}
+    shown: dict[str, Shown] = {}
+    made = render.all_images([plan.drawing for plan in plans])
+    for plan, files in zip(plans, made, strict=True):
+        path = f"figures/{plan.name}"
+        contents |= {f"{path}.{ending}": content for ending, content in files.items()}
+        svg = inline_svg(files["svg"].decode(), plan.name, plan.description)
+        shown[plan.name] = Shown(path, svg, plan.caption)
+    return contents, shown
+
+
+def _add(contents: dict[str, bytes], name: str, table: Table, csv: str) -> tuple[str, Table]:
+    """Add a table in all its formats, and return it with its path for the page."""
+    path = f"tables/{name}"
+    made = {"csv": csv, "md": export.markdown(table), "tex": export.latex(table)}
+    contents |= {f"{path}.{ending}": text.encode() for ending, text in made.items()}
+    return path, table
+
+
+def _figures(section: Section) -> list[Planned]:
+    if not section.measured:
+        return []
+    return [
+        Planned(
+            f"{section.name}--convergence",
+            partial(figures.convergence, section),
+            "Errors and their uncertainty, the measured order as a line, the claimed slope dotted.",
+            figures.described(section),
+        ),
+        Planned(
+            f"{section.name}--local-order",
+            partial(figures.local_orders, section),
+            "Slopes between neighbouring step sizes: how the order is approached.",
+            f"Local orders of {section.title} against the step size; the tables have the numbers.",
+        ),
+    ]
+
+
+def _side_by_side(problem: str, own: Sequence[Section]) -> list[Planned]:
+    name = own[0].name.partition("--")[2]
+    schemes = ", ".join(section.scheme for section in own)
+    plans = [
+        Planned(
+            f"schemes--{name}--convergence",
+            partial(figures.comparison, own),
+            "Strong errors filled, weak errors of the first functional hollow.",
+            f"Errors of {schemes} on {problem} against the step size.",
+        ),
+        Planned(
+            f"schemes--{name}--cost",
+            partial(figures.cost, own),
+            "Errors against the time that a path takes on one thread, with drawing its noise.",
+            f"Errors of {schemes} on {problem} against the time of a path.",
+        ),
+    ]
+    timed = any(row.cost.step_seconds for section in own for row in section.measured)
+    return plans[(len(own) < 2) : (2 if timed else 1)]
+
+
+def _tables(section: Section, contents: dict[str, bytes]) -> list[tuple[str, Table]]:
+    shown = []
+    for kind in ("strong", "weak"):
+        rows = [row for row in section.measured if row.kind == kind]
+        if rows:
+            table = errors_table(f"{kind.capitalize()} error", rows)
+            name = f"{section.name}--{kind}"
+            shown.append(_add(contents, name, table, export.rungs_csv(rows)))
+    for row in section.one_step:
+        name = f"{section.name}--one-step-{row.bears_on}"
+        shown.append(_add(contents, name, terms_table(row), export.terms_csv(row)))
+    if section.checks:
+        table = errors_table("Sample that the errors above were held against", section.checks)
+        csv = export.rungs_csv(section.checks)
+        shown.append(_add(contents, f"{section.name}--check", table, csv))
+    return shown
