@@ -3,7 +3,7 @@
 One look of 32768 paths at the default seed. What one step, the contract and propagation say does
 not depend on the seed; the sampled verdicts are repeated over 20 seeds in `test_seeds.py`. Where
 one step or the contract decides, the errors of whole paths are cut short; in full they are
-measured for every third of a family as a calibration, where no wrong step may make the two routes
+measured for every fifth of a family as a calibration, where no wrong step may make the two routes
 contradict each other.
 """
 
@@ -93,7 +93,7 @@ def test_a_wrong_integrator_is_refuted_for_its_own_fault(mutant: Mutant):
     check(mutant, mutant.options if by_paths else LEAST)
 
 
-IN_FULL = [m for f in FAMILIES for m in f.mutants[::3] if not m.options.get("steps")]
+IN_FULL = [m for f in FAMILIES for m in f.mutants[::5] if not m.options.get("steps")]
 
 
 @pytest.mark.calibration

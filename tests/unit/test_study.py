@@ -19,7 +19,8 @@ def numbers(evidence: sb.Evidence) -> list:
     """Return all that was measured, without what depends on the clock or the threads."""
     found = []
     for row in evidence.results:
-        cost = msgspec.structs.replace(row.cost, seconds=0.0, threads=1, step_seconds=None)
+        timeless = {"seconds": 0.0, "threads": 1, "step_seconds": None}
+        cost = msgspec.structs.replace(row.cost, **timeless)
         found.append(msgspec.structs.replace(row, cost=cost))
     return [evidence.claims, found]
 
