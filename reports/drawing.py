@@ -1,9 +1,10 @@
 """How a row of evidence is drawn on axes: marks, bars, lines, the claimed slope, the key."""
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from functools import wraps
+from typing import TYPE_CHECKING, Any, TypeVar, cast
 
 from sdebench.reports import numbers, style
 from sdebench.reports.sections import Section
@@ -14,6 +15,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
+Make = TypeVar("Make", bound=Callable[..., "Figure"])
 ROOM = 0.5  # orders above and below what is claimed or measured
 HEADROOM = 0.15  # of the logarithmic height, for the key
 LINE = 0.062  # of the height of the axes, from one line of the key to the next
@@ -58,20 +60,36 @@ class Drawn:
 def label(row: Result) -> str:
     """Return what the errors of a row are of: 'strong', or 'weak, mean'."""
     what = row.functional or ("largest on the grid" if row.at == "grid" else "")
-    return f"{row.kind}, {what}" if what else row.kind
+    return printable(f"{row.kind}, {what}" if what else row.kind)
+
+
+def printable(text: str) -> str:
+    """Return a text with a space for what no figure can show, such as a control character."""
+    return "".join(letter if letter.isprintable() else " " for letter in text)
+
+
+def styled(make: Make) -> Make:
+    """Return a function that makes a figure, with the bench's style in force while it does."""
+
+    @wraps(make)
+    def made(*args: Any) -> "Figure":
+        from matplotlib import rc_context
+
+        with rc_context(style.SETTINGS):
+            return make(*args)
+
+    return cast(Make, made)
 
 
 def new_axes(x: str, y: str) -> "tuple[Figure, Axes]":
-    """Return a figure with axes of these labels, in the bench's style."""
-    from matplotlib import rc_context
+    """Return a figure with axes of these labels."""
     from matplotlib.figure import Figure
 
-    with rc_context(style.SETTINGS):
-        figure = Figure(figsize=(style.WIDTH, style.HEIGHT))
-        axes = figure.add_axes(style.FRAME)
-        axes.set_xlabel(x)
-        axes.set_ylabel(y)
-        axes.set_axisbelow(True)
+    figure = Figure(figsize=(style.WIDTH, style.HEIGHT))
+    axes = figure.add_axes(style.FRAME)
+    axes.set_xlabel(x)
+    axes.set_ylabel(y)
+    axes.set_axisbelow(True)
     return figure, axes
 
 
@@ -91,7 +109,11 @@ def of_rows(rows: Sequence[Result]) -> list[Drawn]:
 def of_schemes(sections: Sequence[Section]) -> list[Drawn]:
     """Return how the first row of each kind of several schemes is drawn: schemes in turn."""
     return [
-        Drawn(row, f"{section.scheme}, {label(row)}", *style.SCHEMES[n % len(style.SCHEMES)])
+        Drawn(
+            row,
+            f"{printable(section.scheme)}, {label(row)}",
+            *style.SCHEMES[n % len(style.SCHEMES)],
+        )
         for n, section in enumerate(sections)
         for row in first_of_each_kind(section.measured)
     ]

@@ -24,6 +24,7 @@ from sdebench.reports.drawing import (
     of_schemes,
     powers_of_ten,
     say_nothing,
+    styled,
 )
 from sdebench.reports.sections import Section
 
@@ -31,6 +32,7 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 
+@styled
 def convergence(section: Section) -> "Figure":
     """Return errors against the step size: with bars, fitted lines, and the claimed slopes."""
     figure, axes = new_axes("step size h", "error")
@@ -46,6 +48,7 @@ def convergence(section: Section) -> "Figure":
     return figure
 
 
+@styled
 def local_orders(section: Section) -> "Figure":
     """Return the local order of each pair of neighbouring rungs, beside the claimed orders."""
     figure, axes = new_axes("step size h of the finer rung", "local order")
@@ -76,6 +79,7 @@ def local_orders(section: Section) -> "Figure":
     return figure
 
 
+@styled
 def comparison(sections: Sequence[Section]) -> "Figure":
     """Return errors of several schemes on one problem: strong ones, and weak ones of the mean."""
     figure, axes = new_axes("step size h", "error")
@@ -88,6 +92,7 @@ def comparison(sections: Sequence[Section]) -> "Figure":
     return figure
 
 
+@styled
 def cost(sections: Sequence[Section]) -> "Figure":
     """Return errors against the time that a path takes, for each scheme on one problem."""
     figure, axes = new_axes("time of a path, in seconds", "error")

@@ -118,9 +118,11 @@ def typeset(text: str) -> str:
 
     >>> typeset("(-3.21 ± 0.04)e-05")
     '(−3.21 ± 0.04) × 10⁻⁵'
+    >>> typeset("dw² - h at t=-1, euler-maruyama")
+    'dw² − h at t=−1, euler-maruyama'
     """
     powers = re.sub(r"(?<=[\d)])e([+-]\d+)", lambda m: f" × 10{superscript(int(m[1]))}", text)
-    return re.sub(r"(?<![\w.])-(?=\d)", "−", powers)
+    return re.sub(r"(?<![\w.])-(?=\d)|(?<=\s)-(?=\s)", "−", powers)
 
 
 def measured_order(value: float | None, low: float | None, high: float | None, exact: bool) -> str:

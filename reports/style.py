@@ -39,6 +39,7 @@ SETTINGS: Any = {  # by names that Matplotlib spells out as a type
     "lines.markersize": 5.0,
     "legend.frameon": False,
     "legend.fontsize": 8.5,
+    "text.parse_math": False,  # a dollar in a user's name is a dollar
     "svg.fonttype": "none",  # text stays text: it can be searched, and set in the page's type
     "svg.hashsalt": "sdebench",
     "pdf.fonttype": 3,

@@ -67,8 +67,9 @@ class OneStep:
             cause = name_confusion(self.limits, degree(term)) or ratio_to_needed(term)
             return Ruling(
                 Verdict.REFUTED,
-                f"One-step evidence, {term.term} {term.at}: yours {number(term.yours)}, "
-                f"the SDE needs {number(term.needed)}: {cause}.",
+                f"One-step evidence, {term.term} {term.at}: "
+                f"yours {number(term.yours, term.uncertainty)}, "
+                f"the SDE needs {number(term.needed, term.uncertainty)}: {cause}.",
             )
         local = self.strong if claim.kind == "strong" else self.weak
         if not local.order >= claim.order - tolerance:

@@ -146,9 +146,15 @@ def degree(term: Term) -> int:
     return min(MOMENT_LABELS.index(term.term), 1)
 
 
-def number(value: float | None) -> str:
-    """Return a coefficient for a sentence."""
-    return "NaN" if value is None else f"{value:.6g}"
+def number(value: float | None, uncertainty: float | None) -> str:
+    """Return a coefficient for a sentence: '0' where that is within its uncertainty.
+
+    >>> number(-1.8e-16, 1e-12)
+    '0'
+    """
+    if value is None:
+        return "NaN"
+    return "0" if uncertainty is not None and abs(value) <= uncertainty else f"{value:.6g}"
 
 
 def ratio_to_needed(term: Term) -> str:

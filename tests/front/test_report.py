@@ -98,7 +98,7 @@ def test_a_number_that_is_none_is_refused(typed, measured, folder, wrong):
 
 def test_text_of_a_users_is_shown_as_text(typed, measured, folder):
     """In names, sentences and parameters; it would catch a template that does not escape."""
-    evil = "<img src=x onerror=alert(1)>&\\input{x}|*[a](b)"
+    evil = "<img src=x onerror=alert(1)>&\\input{x}|*[a](b) $\\frac{ $x_\x07"
     found = json.loads((folder / measured()).read_text())
     for row in (*found["claims"], *found["results"]):
         row["scheme"] = row["sentence"] = evil
@@ -183,3 +183,22 @@ def test_the_command_on_the_page_gives_the_same_bits(typed, measured, folder):
     first, again = sb.load("e.json"), sb.load("again.json")
     assert [row.rungs for row in again.results] == [row.rungs for row in first.results]
     assert again.claims == first.claims
+
+
+KINDS = {
+    "a broken contract": ("my.py:step", "gbm"),
+    "nothing that applies": ("exact-ou", "gbm"),
+    "errors that are exact": ("exact-ou", "ou"),
+    "errors of no number": ("euler-maruyama", "ou:theta=10000000"),
+}
+
+
+@pytest.mark.parametrize(("own", "on"), KINDS.values(), ids=KINDS)
+def test_every_outcome_has_its_report(typed, write, folder, own, on):
+    write("@scheme(strong=0.5)\ndef step(sde, t, x, h, noise):\n    return x[::-1] + h\n")
+    typed("measure", own, "--on", on, *QUICK, "--save", "e.json", "--report", "out")
+    claims = sb.load("e.json").claims
+    page = html.unescape((folder / "out" / "report.html").read_text())
+    assert claims
+    assert all(f"{claim.scheme} on {claim.problem}" in page for claim in claims)
+    assert all(numbers.typeset(claim.sentence) in page for claim in claims)

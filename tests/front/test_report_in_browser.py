@@ -34,13 +34,15 @@ SIZES = {"desktop": (1280, 900), "phone": (390, 844)}
 
 
 @sb.scheme(strong=1.0, weak=1.0)
-def uncorrected(sde, t, x, h, noise):
+def uncorrected_step_of_the_operations_desk_of_the_island_grid(sde, t, x, h, noise):
     return x + sde.drift(t, x) * h + sde.diffusion(t, x) * noise.dw
 
 
 @pytest.fixture(scope="module")
 def refuted() -> sb.Evidence:
-    return sb.measure(uncorrected, on="gbm", looks=1, threads=1)
+    return sb.measure(
+        uncorrected_step_of_the_operations_desk_of_the_island_grid, on="gbm", looks=1, threads=1
+    )
 
 
 @pytest.fixture(scope="module")
