@@ -14,6 +14,7 @@ from sdebench.reports import export, figures, render, summary
 from sdebench.reports.errors_table import errors_table
 from sdebench.reports.folder import check_folder, put
 from sdebench.reports.inline import inline_svg
+from sdebench.reports.orders_table import orders_table
 from sdebench.reports.page import Shown, page
 from sdebench.reports.sections import Section, by_problem, sections
 from sdebench.reports.tables import Table, terms_table
@@ -130,6 +131,9 @@ def _side_by_side(problem: str, own: Sequence[Section]) -> list[Planned]:
 
 def _tables(section: Section, contents: dict[str, bytes]) -> list[tuple[str, Table]]:
     shown = []
+    if section.measured:
+        table = orders_table(section.measured)
+        shown.append(_add(contents, f"{section.name}--orders", table, export.table_csv(table)))
     for kind in ("strong", "weak"):
         rows = [row for row in section.measured if row.kind == kind]
         if rows:

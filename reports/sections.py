@@ -43,6 +43,24 @@ class Section:
         return [r for r in self.rows if r.kind in ERRORS and r.rungs and not r.check]
 
     @property
+    def notes(self) -> list[str]:
+        """How the errors were obtained, where it is not as by default, and what checked them."""
+        why = dict.fromkeys(row.why_sampled for row in self.measured if row.why_sampled)
+        notes = [f"Sampled, since {reason}." for reason in why]
+        held = [row for row in self.checks if row.trusted]
+        if held:
+            paths, finest = held[0].cost.paths, max(r.steps for row in held for r in row.rungs)
+            notes.append(
+                f"Propagated errors agree with a sample of {paths} paths, on rungs to {finest} "
+                f"steps ({len(held)} of {len(self.checks)} kinds of error; the tails of others "
+                "are too heavy for a sample)."
+                if len(held) < len(self.checks)
+                else f"Propagated errors agree with a sample of {paths} paths, on rungs to "
+                f"{finest} steps."
+            )
+        return notes
+
+    @property
     def checks(self) -> list[Result]:
         """The samples that propagated errors were held against."""
         return [r for r in self.rows if r.kind in ERRORS and r.rungs and r.check]

@@ -31,6 +31,22 @@ def test_errors_checks_and_terms_are_told_apart(supported_evidence):
     assert [row.kind for row in section.one_step] == ["one-step"] * 2
 
 
+def test_what_was_sampled_says_why_and_what_was_checked_says_by_what(supported_evidence):
+    """And a check of which some rows have too heavy a tail says how many are held to it."""
+    (section,) = sections([supported_evidence])
+    assert section.notes == [
+        "Propagated errors agree with a sample of 32768 paths, on rungs to 64 steps."
+    ]
+    replace = msgspec.structs.replace
+    first = next(row for row in supported_evidence.results if row.check)
+    rows = [replace(row, trusted=row is not first) for row in supported_evidence.results]
+    (section,) = sections([replace(supported_evidence, results=rows)])
+    assert "3 of 4 kinds of error" in section.notes[0]
+    rows = [replace(row, why_sampled="it is so") for row in supported_evidence.results]
+    (section,) = sections([replace(supported_evidence, results=rows)])
+    assert section.notes[0] == "Sampled, since it is so."
+
+
 def test_two_sections_never_share_a_file_name(supported_evidence):
     """Not of one pair in two files, and not of names that differ in what a file name leaves out."""
     several = [supported_evidence] * 2 + [renamed(supported_evidence, n) for n in ("a:b", "a/b")]
