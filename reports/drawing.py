@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 
 Make = TypeVar("Make", bound=Callable[..., "Figure"])
 ROOM = 0.5  # orders above and below what is claimed or measured
+BELOW = {"strong": 0.4, "weak": 0.15}  # of the errors, at which the claimed slope is drawn
 HEADROOM = 0.15  # of the logarithmic height, for the key
 LINE = 0.062  # of the height of the axes, from one line of the key to the next
 LEAST = 0.2  # of an error, to which the lower end of a bar that reaches 0 is drawn
@@ -169,10 +170,10 @@ def draw_guide(axes: "Axes", row: Result) -> None:
     rungs = sorted(rungs, key=lambda rung: rung.h)[:3]
     base = min(abs(rung.error or 0.0) * (rungs[0].h / rung.h) ** row.claimed for rung in rungs)
     h = [rungs[0].h, rungs[-1].h]
-    line = [base * 0.35 * (each / h[0]) ** row.claimed for each in h]
+    line = [base * BELOW[row.kind] * (each / h[0]) ** row.claimed for each in h]
     axes.plot(h, line, color=style.INK, linestyle=":", linewidth=1.2)
     axes.annotate(
-        f"claimed {numbers.claimed(row.claimed)}",
+        f"{row.kind} claim {numbers.claimed(row.claimed)}",
         (h[1], line[1]),
         xytext=(4, -3),
         textcoords="offset points",

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from sdebench.reports import numbers
 from sdebench.reports.tables import Table
 
-from sdebench.evidence import Result
+from sdebench.evidence import ClaimResult, Result
 
 LATEX = {
     "\\": r"\textbackslash{}",
@@ -30,6 +30,7 @@ LATEX = {
     "√": r"$\surd$",
     "→": r"$\to$",
     "∞": r"$\infty$",
+    "·": r"$\cdot$",
     "–": "--",
     "—": "---",
     "…": r"\ldots{}",
@@ -54,6 +55,7 @@ GREEK = {
     "ω": "omega",
     "Δ": "Delta",
 }
+CLAIM = ("kind", "functional", "claimed", "order", "low", "high", "exact", "verdict")
 FILES = ("csv", "md", "tex")
 COLUMNS = (
     *("scheme", "problem", "kind", "functional", "route", "check"),
@@ -79,13 +81,12 @@ def rungs_csv(rows: Sequence[Result]) -> str:
 def terms_csv(row: Result) -> str:
     """Return the terms of one step with every digit."""
     names = ("term", "at", "yours", "needed", "difference", "uncertainty", "differs", "required")
-    out = io.StringIO()
-    writer = csv.writer(out, lineterminator="\n")
-    writer.writerow(names)
-    for term in row.terms:
-        values = [getattr(term, name) for name in names]
-        writer.writerow(["" if value is None else value for value in values])
-    return out.getvalue()
+    return _structs_csv(names, row.terms)
+
+
+def claims_csv(claims: Sequence[ClaimResult]) -> str:
+    """Return the claims with every digit of their orders."""
+    return _structs_csv(("scheme", "problem", *CLAIM), claims)
 
 
 def table_csv(table: Table) -> str:
@@ -113,6 +114,16 @@ def latex(table: Table) -> str:
     ]
     lines = [rf"\begin{{tabular}}{{{columns}}}", r"\toprule", head, r"\midrule", *body]
     return "\n".join([*lines, r"\bottomrule", r"\end{tabular}", ""])
+
+
+def _structs_csv(names: Sequence[str], rows: Sequence[object]) -> str:
+    out = io.StringIO()
+    writer = csv.writer(out, lineterminator="\n")
+    writer.writerow(names)
+    for row in rows:
+        values = [getattr(row, name) for name in names]
+        writer.writerow(["" if value is None else value for value in values])
+    return out.getvalue()
 
 
 def escape_latex(text: str) -> str:

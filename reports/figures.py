@@ -35,7 +35,7 @@ if TYPE_CHECKING:
 @styled
 def convergence(section: Section) -> "Figure":
     """Return errors against the step size: with bars, fitted lines, and the claimed slopes."""
-    figure, axes = new_axes("step size h", "error")
+    figure, axes = new_axes("step size h", "size of error")
     drawn = of_rows(section.measured)
     for each in drawn:
         draw_errors(axes, each)
@@ -82,7 +82,7 @@ def local_orders(section: Section) -> "Figure":
 @styled
 def comparison(sections: Sequence[Section]) -> "Figure":
     """Return errors of several schemes on one problem: strong ones, and weak ones of the mean."""
-    figure, axes = new_axes("step size h", "error")
+    figure, axes = new_axes("step size h", "size of error")
     drawn = [each for each in of_schemes(sections) if each.rungs]
     for each in drawn:
         draw_errors(axes, each)
@@ -95,7 +95,7 @@ def comparison(sections: Sequence[Section]) -> "Figure":
 @styled
 def cost(sections: Sequence[Section]) -> "Figure":
     """Return errors against the time that a path takes, for each scheme on one problem."""
-    figure, axes = new_axes("time of a path, in seconds", "error")
+    figure, axes = new_axes("time of a path, in seconds", "size of error")
     drawn = [e for e in of_schemes(sections) if e.row.cost.step_seconds and e.rungs]
     for each in drawn:
         axes.plot(
@@ -124,3 +124,15 @@ def described(section: Section) -> str:
                 f"{numbers.claimed(row.claimed)}, measured {numbers.order(row.order)}"
             )
     return f"Errors of {section.title} against the step size. {'; '.join(parts)}."
+
+
+def described_orders(section: Section) -> str:
+    """Return in words what the plot of local orders shows."""
+    parts = []
+    for row in section.measured:
+        orders = [r.local_order for r in row.rungs if r.local_order is not None and r.counts]
+        if orders:
+            first, last = numbers.order(orders[0]), numbers.order(orders[-1])
+            claimed = numbers.claimed(row.claimed)
+            parts.append(f"{label(row)}: from {first} to {last} as h falls, claimed {claimed}")
+    return f"Local orders of {section.title}. {'; '.join(parts)}."

@@ -3,6 +3,7 @@
 import io
 import multiprocessing
 import os
+import signal
 from collections.abc import Callable, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from typing import TYPE_CHECKING, Any
@@ -54,7 +55,10 @@ def all_images(drawings: Sequence[Drawing]) -> list[Mapping[str, bytes]]:
     import matplotlib.figure  # noqa: F401  so that each process need not
 
     context = multiprocessing.get_context("fork")
-    with ProcessPoolExecutor(min(cores, len(drawings)), mp_context=context) as pool:
+    heedless = (signal.SIGINT, signal.SIG_IGN)  # an interrupt is the parent's to tell
+    with ProcessPoolExecutor(
+        min(cores, len(drawings)), context, initializer=signal.signal, initargs=heedless
+    ) as pool:
         return list(pool.map(_draw, drawings, chunksize=2))
 
 

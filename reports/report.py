@@ -45,7 +45,8 @@ def report(evidences: Sequence[Evidence]) -> dict[str, bytes]:
     contents, shown = _drawn(plans)
     tables = {section.name: _tables(section, contents) for section in found}
     claims = summary.matrix(found)
-    _add(contents, "claims", claims, export.table_csv(claims))
+    every = [claim for section in found for claim in section.claims]
+    _add(contents, "claims", claims, export.claims_csv(every))
     contents["summary.md"] = summary.summary(found).encode()
     contents["report.html"] = page(
         found,
@@ -90,20 +91,21 @@ def _add(contents: dict[str, bytes], name: str, table: Table, csv: str) -> tuple
 
 
 def _figures(section: Section) -> list[Planned]:
-    if not section.measured:
+    if not any(rung.error and rung.counts for row in section.measured for rung in row.rungs):
         return []
     return [
         Planned(
             f"{section.name}--convergence",
             partial(figures.convergence, section),
-            "Errors and their uncertainty, the measured order as a line, the claimed slope dotted.",
+            "Errors, with their uncertainty where it is wider than a mark. Lines: the slope of the "
+            "finest pair, extended; dotted, the claimed slope.",
             figures.described(section),
         ),
         Planned(
             f"{section.name}--local-order",
             partial(figures.local_orders, section),
             "Slopes between neighbouring step sizes: how the order is approached.",
-            f"Local orders of {section.title} against the step size; the tables have the numbers.",
+            figures.described_orders(section),
         ),
     ]
 

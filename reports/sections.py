@@ -26,6 +26,7 @@ class Section:
     name: str
     claims: Sequence[ClaimResult]
     rows: Sequence[Result]
+    about: Sequence[str] = ()
 
     @property
     def title(self) -> str:
@@ -44,20 +45,19 @@ class Section:
 
     @property
     def notes(self) -> list[str]:
-        """How the errors were obtained, where it is not as by default, and what checked them."""
+        """What the problem and the scheme are, why errors were sampled, and what checked them."""
         why = dict.fromkeys(row.why_sampled for row in self.measured if row.why_sampled)
-        notes = [f"Sampled, since {reason}." for reason in why]
+        notes = [*self.about, *(f"Sampled, since {reason}." for reason in why)]
         held = [row for row in self.checks if row.trusted]
         if held:
             paths, finest = held[0].cost.paths, max(r.steps for row in held for r in row.rungs)
             notes.append(
                 f"Propagated errors agree with a sample of {paths} paths, on rungs to {finest} "
-                f"steps ({len(held)} of {len(self.checks)} kinds of error; the tails of others "
-                "are too heavy for a sample)."
-                if len(held) < len(self.checks)
-                else f"Propagated errors agree with a sample of {paths} paths, on rungs to "
-                f"{finest} steps."
+                "steps: a difference that chance brings once in a million runs ends the run."
             )
+        spared = [row.functional or row.kind for row in self.checks if not row.trusted]
+        if spared:
+            notes.append(f"Too heavy in its tail to be held against a sample: {', '.join(spared)}.")
         return notes
 
     @property
@@ -86,6 +86,11 @@ def sections(evidences: Iterable[Evidence]) -> list[Section]:
                     name,
                     [c for c in evidence.claims if (c.scheme, c.problem) == (scheme, problem)],
                     [r for r in evidence.results if (r.scheme, r.problem) == (scheme, problem)],
+                    [
+                        f"{key}: {evidence.about[key]}"
+                        for key in (problem, scheme)
+                        if evidence.about.get(key)
+                    ],
                 )
             )
     return found

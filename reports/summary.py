@@ -35,7 +35,9 @@ class Cell:
         return MARKS[self.verdict]
 
     def __str__(self) -> str:
-        return f"{self.mark} {self.verdict.value} {self.measured}".strip()
+        claim = f"claimed {self.claimed}" if self.claimed else ""
+        said = [part for part in (self.measured, claim) if part]
+        return f"{self.verdict.value} ({', '.join(said)})" if said else self.verdict.value
 
 
 def verdict_sentence(sections: Sequence[Section]) -> str:
@@ -70,13 +72,18 @@ def cells(section: Section, kind: str) -> list[Cell]:
     """Return what there is to say of a section's claims of one kind."""
     return [
         Cell(
-            numbers.measured_order(claim.order, claim.low, claim.high, claim.exact),
+            measured(claim),
             numbers.claimed(claim.claimed),
             claim.verdict,
         )
         for claim in section.claims
         if claim.kind == kind
     ]
+
+
+def measured(claim: ClaimResult) -> str:
+    """Return the order that was measured for a claim, with its uncertainty."""
+    return numbers.measured_order(claim.order, claim.low, claim.high, claim.exact)
 
 
 def matrix(sections: Sequence[Section]) -> Table:

@@ -170,13 +170,17 @@ class Provenance(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Evidence(msgspec.Struct, frozen=True, kw_only=True):
-    """All that one run measured; shows itself as a table in a notebook."""
+    """All that one run measured; shows itself as a table in a notebook.
+
+    `about` says in a line what each scheme and problem is, by its name.
+    """
 
     format: Literal["sdebench-evidence/1"] = FORMAT
     verdict: Verdict
     provenance: Provenance
     claims: list[ClaimResult]
     results: list[Result]
+    about: dict[str, str] = {}
 
     @property
     def exit_code(self) -> int:

@@ -80,8 +80,8 @@ class Trend:
     """Where the last two local orders lead, q_before and then q.
 
     `curbed` is where a falling order would lead, min(q, q - 2.4 (q_before - q)); `lifted` where a
-    rising one would, max(q, q + 4 (q - q_before)); `extrapolated` is 2 q - q_before, and `moved`
-    is q - q_before.
+    rising one would, max(q, q + 4 (q - q_before)); `extrapolated` is where an error C h^p (1 + c h)
+    leads, which is 2 q - q_before on rungs that halve the step; `moved` is q - q_before.
     """
 
     curbed: Interval
@@ -150,10 +150,21 @@ def observed_order(errors: Errors, counting: Sequence[int], quantile: float) -> 
     trend = Trend(
         curbed=Interval(*map(min, _ends(falling), _ends(local))),
         lifted=Interval(*map(max, _ends(rising), _ends(local))),
-        extrapolated=combined(errors, triple, (-1.0, 2.0), quantile, orders),
+        extrapolated=combined(errors, triple, _to_the_limit(errors, triple), quantile, orders),
         moved=combined(errors, triple, (-1.0, 1.0), quantile, orders),
     )
     return Order(tuple(counting), local, trend, _outlier(errors, counting, quantile))
+
+
+def _to_the_limit(errors: Errors, triple: tuple[int, int, int]) -> tuple[float, float]:
+    """Return the weights of q_before and q for the order as h → 0 (Richardson 1911).
+
+    The local order over k octaves whose finer step is h is off by c h (2^k - 1) / (k log 2), to
+    first order: the weights are those that cancel it.
+    """
+    before, last = distance(errors, *triple[:2]), distance(errors, *triple[1:])
+    ratio = 2.0**last * ((2.0**before - 1) / before) / ((2.0**last - 1) / last)
+    return -1 / (ratio - 1), ratio / (ratio - 1)
 
 
 OUTSTANDING = 1.0  # orders by which the local order falls to an outlier; it rises by half as many

@@ -170,7 +170,19 @@ def measure(
         ),
         claims=claims,
         results=rows,
+        about=_about(pairs),
     )
+
+
+def _about(pairs: Sequence[Pair]) -> dict[str, str]:
+    """Return what every scheme and problem is, in a line, by its label."""
+    found = {}
+    for pair in pairs:
+        scheme, problem = pair.plan.scheme, pair.plan.problem
+        values = ", ".join(f"{name} = {value:g}" for name, value in problem.params.items())
+        found[problem.label] = f"{problem.title}, {problem.equation} (Itô), with {values}"
+        found[scheme.label] = (scheme.doc or "").partition("\n")[0]
+    return found
 
 
 def _versions() -> dict[str, str]:

@@ -34,16 +34,19 @@ def test_errors_checks_and_terms_are_told_apart(supported_evidence):
 def test_what_was_sampled_says_why_and_what_was_checked_says_by_what(supported_evidence):
     """And a check of which some rows have too heavy a tail says how many are held to it."""
     (section,) = sections([supported_evidence])
-    assert section.notes == [
-        "Propagated errors agree with a sample of 32768 paths, on rungs to 64 steps."
-    ]
+    problem, scheme, check = section.notes
+    assert problem.startswith(
+        "gbm: geometric Brownian motion, dX = mu X dt + sigma X dW (Itô), with "
+    )
+    assert scheme.startswith("milstein: Milstein")
+    assert check.startswith("Propagated errors agree with a sample of 32768 paths, on rungs to 64 ")
     replace = msgspec.structs.replace
     first = next(row for row in supported_evidence.results if row.check)
     rows = [replace(row, trusted=row is not first) for row in supported_evidence.results]
     (section,) = sections([replace(supported_evidence, results=rows)])
-    assert "3 of 4 kinds of error" in section.notes[0]
+    assert section.notes[-1] == "Too heavy in its tail to be held against a sample: strong."
     rows = [replace(row, why_sampled="it is so") for row in supported_evidence.results]
-    (section,) = sections([replace(supported_evidence, results=rows)])
+    (section,) = sections([replace(supported_evidence, results=rows, about={})])
     assert section.notes[0] == "Sampled, since it is so."
 
 
