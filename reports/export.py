@@ -3,6 +3,7 @@
 import csv
 import io
 from collections.abc import Sequence
+from enum import Enum
 
 from sdebench.reports import numbers
 from sdebench.reports.tables import Table
@@ -122,7 +123,8 @@ def _structs_csv(names: Sequence[str], rows: Sequence[object]) -> str:
     writer.writerow(names)
     for row in rows:
         values = [getattr(row, name) for name in names]
-        writer.writerow(["" if value is None else value for value in values])
+        plain = [value.value if isinstance(value, Enum) else value for value in values]
+        writer.writerow(["" if value is None else value for value in plain])
     return out.getvalue()
 
 

@@ -45,9 +45,10 @@ class Section:
 
     @property
     def notes(self) -> list[str]:
-        """What the problem and the scheme are, why errors were sampled, and what checked them."""
+        """What problem and scheme are, the contract, why errors were sampled, what checked them."""
         why = dict.fromkeys(row.why_sampled for row in self.measured if row.why_sampled)
-        notes = [*self.about, *(f"Sampled, since {reason}." for reason in why)]
+        kept = [row.sentence for row in self.rows if row.kind == "contract"]
+        notes = [*self.about, *kept, *(f"Sampled, since {reason}." for reason in why)]
         held = [row for row in self.checks if row.trusted]
         if held:
             paths, finest = held[0].cost.paths, max(r.steps for row in held for r in row.rungs)

@@ -40,6 +40,12 @@ def test_every_digit_of_every_term_reads_back_from_csv(refuted_evidence):
     assert [line["differs"] for line in read] == [str(term.differs) for term in row.terms]
 
 
+def test_every_digit_of_every_claim_reads_back_from_csv(refuted_evidence):
+    read = list(csv.DictReader(io.StringIO(export.claims_csv(refuted_evidence.claims))))
+    assert [float(line["order"]) for line in read] == [c.order for c in refuted_evidence.claims]
+    assert [line["verdict"] for line in read] == [c.verdict.value for c in refuted_evidence.claims]
+
+
 def test_text_with_commas_quotes_and_lines_reads_back_from_csv():
     table = Table("", ("a", "b"), [('say "x", then\ny', "1")], frozenset())
     assert list(csv.reader(io.StringIO(export.table_csv(table)))) == [["a", "b"], [*table.rows[0]]]

@@ -253,3 +253,16 @@ def test_the_trend_of_clear_rungs_is_propagated_linearly():
     found = observed_order(made, [0, 1, 2], Q).trend.moved
     spread = Q * 0.01 * math.sqrt(1 + 4 + 1) / math.log(2)
     assert abs(found.high - found.estimate - spread) <= round_off(spread + 1.0, 64)
+
+
+@pytest.mark.parametrize("steps", [(4, 8, 16), (4, 16, 64), (4, 8, 32), (4, 32, 64)])
+def test_an_order_is_extrapolated_to_its_limit_whatever_the_distance_of_rungs(steps):
+    """Errors h (1 + c h): off by (c h)² of the coarsest h at most, where q itself is off by c h.
+
+    It would catch the weights of rungs that halve the step on those that quarter it.
+    """
+    c = 1e-3
+    found = errors([(1 + c / n) / n for n in steps], relative=1e-12, steps=steps)
+    order = observed_order(found, range(3), Q)
+    assert abs(order.local.estimate - 1) > c / steps[-1] / 2
+    assert abs(order.trend.extrapolated.estimate - 1) <= (c / steps[0]) ** 2 + round_off(1.0, 64)

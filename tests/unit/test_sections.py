@@ -34,7 +34,8 @@ def test_errors_checks_and_terms_are_told_apart(supported_evidence):
 def test_what_was_sampled_says_why_and_what_was_checked_says_by_what(supported_evidence):
     """And a check of which some rows have too heavy a tail says how many are held to it."""
     (section,) = sections([supported_evidence])
-    problem, scheme, check = section.notes
+    problem, scheme, contract, check = section.notes
+    assert contract == "The step keeps every law of its contract."
     assert problem.startswith(
         "gbm: geometric Brownian motion, dX = mu X dt + sigma X dW (Itô), with "
     )
@@ -47,7 +48,7 @@ def test_what_was_sampled_says_why_and_what_was_checked_says_by_what(supported_e
     assert section.notes[-1] == "Too heavy in its tail to be held against a sample: strong."
     rows = [replace(row, why_sampled="it is so") for row in supported_evidence.results]
     (section,) = sections([replace(supported_evidence, results=rows, about={})])
-    assert section.notes[0] == "Sampled, since it is so."
+    assert section.notes[1] == "Sampled, since it is so."
 
 
 def test_two_sections_never_share_a_file_name(supported_evidence):
