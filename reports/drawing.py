@@ -1,10 +1,8 @@
-"""How a row of evidence is drawn on axes: marks, bars, lines, the claimed slope, the key."""
+"""How a row of evidence is drawn: marks, bars, lines, the claimed slope, the key."""
 
-import math
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
-from functools import wraps
-from typing import TYPE_CHECKING, Any, TypeVar, cast
+from typing import TYPE_CHECKING
 
 from sdebench.reports import numbers, style
 from sdebench.reports.sections import Section
@@ -13,12 +11,9 @@ from sdebench.evidence import Result, Rung
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
-    from matplotlib.figure import Figure
 
-Make = TypeVar("Make", bound=Callable[..., "Figure"])
 ROOM = 0.5  # orders above and below what is claimed or measured
 BELOW = {"strong": 0.4, "weak": 0.15}  # of the errors, at which the claimed slope is drawn
-HEADROOM = 0.15  # of the logarithmic height, for the key
 LINE = 0.062  # of the height of the axes, from one line of the key to the next
 LEAST = 0.2  # of an error, to which the lower end of a bar that reaches 0 is drawn
 
@@ -67,31 +62,6 @@ def label(row: Result) -> str:
 def printable(text: str) -> str:
     """Return a text with a space for what no figure can show, such as a control character."""
     return "".join(letter if letter.isprintable() else " " for letter in text)
-
-
-def styled(make: Make) -> Make:
-    """Return a function that makes a figure, with the bench's style in force while it does."""
-
-    @wraps(make)
-    def made(*args: Any) -> "Figure":
-        from matplotlib import rc_context
-
-        with rc_context(style.SETTINGS):
-            return make(*args)
-
-    return cast(Make, made)
-
-
-def new_axes(x: str, y: str) -> "tuple[Figure, Axes]":
-    """Return a figure with axes of these labels."""
-    from matplotlib.figure import Figure
-
-    figure = Figure(figsize=(style.WIDTH, style.HEIGHT))
-    axes = figure.add_axes(style.FRAME)
-    axes.set_xlabel(x)
-    axes.set_ylabel(y)
-    axes.set_axisbelow(True)
-    return figure, axes
 
 
 def of_rows(rows: Sequence[Result]) -> list[Drawn]:
@@ -162,9 +132,9 @@ def draw_fit(axes: "Axes", drawn: Drawn) -> None:
     axes.plot(h, line, color=drawn.colour, linestyle=drawn.line, linewidth=0.9)
 
 
-def draw_guide(axes: "Axes", row: Result) -> None:
+def draw_guide(axes: "Axes", drawn: Drawn) -> None:
     """Draw the claimed slope, a little below the errors."""
-    rungs = [rung for rung in row.rungs if rung.error and rung.counts]
+    row, rungs = drawn.row, drawn.rungs
     if row.claimed is None or len(rungs) < 2:
         return
     rungs = sorted(rungs, key=lambda rung: rung.h)[:3]
@@ -200,47 +170,6 @@ def draw_claims(axes: "Axes", claimed: Sequence[float], shown: Sequence[float]) 
     near = [order for order in shown if not claimed or abs(order - claimed[-1]) < 4 * ROOM]
     ends = [*claimed, *near]
     axes.set_ylim(min(ends) - ROOM, max(ends) + ROOM)
-
-
-def logarithmic(axes: "Axes") -> None:
-    """Make both axes logarithmic, with room above for the key."""
-    if not axes.lines:
-        say_nothing(axes)
-    axes.set_xscale("log")
-    axes.set_yscale("log")
-    powers_of_ten(axes.xaxis)
-    powers_of_ten(axes.yaxis)
-    low, high = axes.get_ylim()
-    axes.set_ylim(low, high * (high / low) ** HEADROOM)
-
-
-def say_nothing(axes: "Axes") -> None:
-    """Say that there is nothing to draw, on axes that are still fit for logarithms."""
-    axes.set_xlim(1e-3, 1.0)
-    axes.set_ylim(1e-3, 1.0)
-    said = "no error that counts"
-    axes.text(0.5, 0.5, said, transform=axes.transAxes, color=style.INK, ha="center")
-
-
-def powers_of_ten(axis: object) -> None:
-    """Mark an axis at powers of ten, and between where it has few."""
-    from matplotlib.axis import Axis
-    from matplotlib.ticker import FuncFormatter, LogLocator, NullLocator
-
-    assert isinstance(axis, Axis)
-    low, high = sorted(axis.get_view_interval())
-    between = (1.0, 2.0, 5.0) if high < 20 * low else (1.0,)
-    axis.set_major_locator(LogLocator(10, subs=between, numticks=9))
-    axis.set_minor_locator(NullLocator())
-    axis.set_major_formatter(FuncFormatter(lambda value, _: _power(value)))
-
-
-def _power(value: float) -> str:
-    exponent = math.floor(math.log10(value) + 1e-9)
-    first = round(value / 10.0**exponent)
-    if abs(exponent) <= 1:
-        return f"{value:g}"
-    return f"{f'{first} × ' if first != 1 else ''}10{numbers.superscript(exponent)}"
 
 
 def draw_key(axes: "Axes", drawn: Sequence[Drawn], top: bool = True) -> None:

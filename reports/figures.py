@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from sdebench.reports import numbers
+from sdebench.reports.axes import logarithmic, new_axes, powers_of_ten, say_nothing, styled
 from sdebench.reports.drawing import (
     LINE,
     ROOM,
@@ -18,13 +19,8 @@ from sdebench.reports.drawing import (
     draw_rest,
     first_of_each_kind,
     label,
-    logarithmic,
-    new_axes,
     of_rows,
     of_schemes,
-    powers_of_ten,
-    say_nothing,
-    styled,
 )
 from sdebench.reports.sections import Section
 
@@ -41,8 +37,8 @@ def convergence(section: Section) -> "Figure":
         draw_errors(axes, each)
         draw_rest(axes, each)
         draw_fit(axes, each)
-    for row in first_of_each_kind(section.measured):
-        draw_guide(axes, row)
+    for each in of_rows(first_of_each_kind(section.measured)):
+        draw_guide(axes, each)
     logarithmic(axes)
     draw_key(axes, drawn)
     return figure

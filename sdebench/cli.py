@@ -95,9 +95,9 @@ def measure(
 
     SCHEME is a registered name or file.py:function; none means every registered one.
     """
-    from sdebench.evidence import check_writable
     from sdebench.reports import terminal
     from sdebench.study import measure as run
+    from sdebench.whole_file import check_writable
 
     tell_faults()
     if save is not None:

@@ -28,6 +28,7 @@ CHECKED = 1e-8  # of the size of X: a miss of E f(X_T) up to that is none, howev
 FINE = 1e-11  # of the size of X: errors are resolved that far, however small they are
 LOST = 2e-9  # of an expectation, to the round-off of matrix powers: 1e-9 was seen in 15000 of them
 ROUNDS = 4  # of refinement
+HELPED = 0.5  # times the uncertainty before: less is no help to what explodes
 HIDDEN = "round-off hides it"
 
 
@@ -136,7 +137,7 @@ class Rung:
         """Whether an estimate is good enough, or as good as round-off lets it be, or explodes."""
         found = self.found[goal]
         explodes = found.uncertainty > self._as_measure(self.scale, goal)
-        if before is not None and explodes and found.uncertainty > 0.5 * before.uncertainty:
+        if before is not None and explodes and found.uncertainty > HELPED * before.uncertainty:
             return True
         least = max(self._as_measure(FINE * self.scale, goal), 2 * self._lost(goal, found.value))
         enough = max(GOOD * abs(found.value), least)

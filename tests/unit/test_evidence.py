@@ -12,8 +12,9 @@ import pytest
 
 import sdebench as sb
 from sdebench.errors import BadEvidenceFile, CannotWrite
-from sdebench.evidence import FORMAT, Evidence, check_writable, write_whole
+from sdebench.evidence import FORMAT, Evidence
 from sdebench.verdict import Verdict
+from sdebench.whole_file import check_writable, write_whole
 
 BOTH = ["supported_evidence", "refuted_evidence"]
 
