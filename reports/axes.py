@@ -13,6 +13,7 @@ if TYPE_CHECKING:
 
 Make = TypeVar("Make", bound=Callable[..., "Figure"])
 HEADROOM = 0.15  # of the logarithmic height, for the key
+LABELS = (-0.11, -0.125)  # of the axes, at which they are named: to find room for it takes time
 SLACK = 1e-9  # by which the logarithm of a power of ten may fall short of it
 
 
@@ -20,11 +21,11 @@ def styled(make: Make) -> Make:
     """Return a function that makes a figure, with the bench's style in force while it does."""
 
     @wraps(make)
-    def made(*args: Any) -> "Figure":
+    def made(*args: Any, **named: Any) -> "Figure":
         from matplotlib import rc_context
 
         with rc_context(style.SETTINGS):
-            return make(*args)
+            return make(*args, **named)
 
     return cast(Make, made)
 
@@ -38,6 +39,8 @@ def new_axes(x: str, y: str) -> "tuple[Figure, Axes]":
     axes.set_xlabel(x)
     axes.set_ylabel(y)
     axes.set_axisbelow(True)
+    axes.xaxis.set_label_coords(0.5, LABELS[0])
+    axes.yaxis.set_label_coords(LABELS[1], 0.5)
     return figure, axes
 
 

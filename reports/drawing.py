@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 from sdebench.reports import numbers, style
 from sdebench.reports.sections import Section
+from sdebench.reports.tables import error_of
 
 from sdebench.evidence import Result, Rung
 
@@ -15,6 +16,8 @@ if TYPE_CHECKING:
 ROOM = 0.5  # orders above and below what is claimed or measured
 BELOW = {"strong": 0.4, "weak": 0.15}  # of the errors, at which the claimed slope is drawn
 LINE = 0.062  # of the height of the axes, from one line of the key to the next
+SHRINK = 2.0  # points, by which the marks of a scheme are smaller than those of the one before
+MOST_SHRUNK = 2  # times
 LEAST = 0.2  # of an error, to which the lower end of a bar that reaches 0 is drawn
 
 
@@ -26,6 +29,7 @@ class Drawn:
     label: str
     colour: str
     mark: str
+    size: float = style.MARK
 
     @property
     def filled(self) -> bool:
@@ -54,9 +58,8 @@ class Drawn:
 
 
 def label(row: Result) -> str:
-    """Return what the errors of a row are of: 'strong', or 'weak, mean'."""
-    what = row.functional or ("largest on the grid" if row.at == "grid" else "")
-    return printable(f"{row.kind}, {what}" if what else row.kind)
+    """Return what the errors of a row are of, as a figure can show it."""
+    return printable(error_of(row))
 
 
 def printable(text: str) -> str:
@@ -77,13 +80,19 @@ def of_rows(rows: Sequence[Result]) -> list[Drawn]:
     return found
 
 
-def of_schemes(sections: Sequence[Section]) -> list[Drawn]:
-    """Return how the first row of each kind of several schemes is drawn: schemes in turn."""
+def of_schemes(sections: Sequence[Section], among: Sequence[str] = ()) -> list[Drawn]:
+    """Return how the first row of each kind of several schemes is drawn.
+
+    Their colours go by their places `among` all schemes; marks shrink from the first to the last,
+    so that errors that are the same show as one mark inside of another.
+    """
+    places = list(dict.fromkeys([*among, *(section.scheme for section in sections)]))
     return [
         Drawn(
             row,
             f"{printable(section.scheme)}, {label(row)}",
-            *style.SCHEMES[n % len(style.SCHEMES)],
+            *style.SCHEMES[places.index(section.scheme) % len(style.SCHEMES)],
+            style.MARK + SHRINK * min(len(sections) - 1 - n, MOST_SHRUNK),
         )
         for n, section in enumerate(sections)
         for row in first_of_each_kind(section.measured)
@@ -108,9 +117,9 @@ def draw_errors(axes: "Axes", drawn: Drawn) -> None:
             color=drawn.colour,
             marker=drawn.mark,
             markerfacecolor=drawn.face,
+            markersize=drawn.size,
             linestyle="none",
             elinewidth=1.0,
-            capsize=2.0,
         )
 
 
@@ -144,8 +153,8 @@ def draw_guide(axes: "Axes", drawn: Drawn) -> None:
     axes.plot(h, line, color=style.INK, linestyle=":", linewidth=1.2)
     axes.annotate(
         f"{row.kind} claim {numbers.claimed(row.claimed)}",
-        (h[1], line[1]),
-        xytext=(4, -3),
+        (h[0], line[0]),
+        xytext=(4, -1),
         textcoords="offset points",
         fontsize=8,
         color=style.INK,
@@ -159,13 +168,12 @@ def draw_claims(axes: "Axes", claimed: Sequence[float], shown: Sequence[float]) 
         axes.axhline(order, color=style.INK, linestyle=":", linewidth=1.0)
         axes.annotate(
             f"claimed {numbers.claimed(order)}",
-            (0.995, order),
+            (0.0, order),
             xycoords=("axes fraction", "data"),
-            xytext=(-2, 2),
+            xytext=(3, 4),
             textcoords="offset points",
             fontsize=8,
             color=style.INK,
-            horizontalalignment="right",
         )
     near = [order for order in shown if not claimed or abs(order - claimed[-1]) < 4 * ROOM]
     ends = [*claimed, *near]

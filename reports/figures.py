@@ -11,6 +11,7 @@ from sdebench.reports.axes import logarithmic, new_axes, powers_of_ten, say_noth
 from sdebench.reports.drawing import (
     LINE,
     ROOM,
+    Drawn,
     draw_claims,
     draw_errors,
     draw_fit,
@@ -76,10 +77,13 @@ def local_orders(section: Section) -> "Figure":
 
 
 @styled
-def comparison(sections: Sequence[Section]) -> "Figure":
-    """Return errors of several schemes on one problem: strong ones, and weak ones of the mean."""
+def comparison(sections: Sequence[Section], among: Sequence[str] = ()) -> "Figure":
+    """Return errors of several schemes on one problem: strong ones, and weak ones of the mean.
+
+    A scheme has the colour of its place `among` all schemes of a report, if they are given.
+    """
     figure, axes = new_axes("step size h", "size of error")
-    drawn = [each for each in of_schemes(sections) if each.rungs]
+    drawn = [each for each in of_schemes(sections, among) if each.rungs]
     for each in drawn:
         draw_errors(axes, each)
         draw_fit(axes, each)
@@ -89,10 +93,10 @@ def comparison(sections: Sequence[Section]) -> "Figure":
 
 
 @styled
-def cost(sections: Sequence[Section]) -> "Figure":
-    """Return errors against the time that a path takes, for each scheme on one problem."""
+def cost(sections: Sequence[Section], among: Sequence[str] = ()) -> "Figure":
+    """Return errors against the time that a path takes; colours as in `comparison`."""
     figure, axes = new_axes("time of a path, in seconds", "size of error")
-    drawn = [e for e in of_schemes(sections) if e.row.cost.step_seconds and e.rungs]
+    drawn = [e for e in of_schemes(sections, among) if e.row.cost.step_seconds and e.rungs]
     for each in drawn:
         axes.plot(
             [rung.steps * (each.row.cost.step_seconds or 0.0) for rung in each.rungs],
@@ -101,6 +105,7 @@ def cost(sections: Sequence[Section]) -> "Figure":
             marker=each.mark,
             markerfacecolor=each.face,
             linestyle=each.line,
+            markersize=each.size,
         )
     logarithmic(axes)
     draw_key(axes, drawn, top=False)
@@ -109,17 +114,26 @@ def cost(sections: Sequence[Section]) -> "Figure":
 
 def described(section: Section) -> str:
     """Return in words what the convergence plot of a section shows."""
-    parts = []
-    for row in section.measured:
-        known = [rung for rung in row.rungs if rung.error and rung.counts]
-        if known:
-            first, last = known[0], known[-1]
-            parts.append(
-                f"{label(row)}: from {abs(first.error or 0):.2g} at h = {first.h:.2g} to "
-                f"{abs(last.error or 0):.2g} at h = {last.h:.2g}, claimed order "
-                f"{numbers.claimed(row.claimed)}, measured {numbers.order(row.order)}"
-            )
+    parts = [
+        f"{each.label}: {_span(each)}, claimed order {numbers.claimed(each.row.claimed)}, "
+        f"measured {numbers.order(each.row.order)}"
+        for each in of_rows(section.measured)
+        if each.rungs
+    ]
     return f"Errors of {section.title} against the step size. {'; '.join(parts)}."
+
+
+def described_together(problem: str, sections: Sequence[Section], against: str) -> str:
+    """Return in words what a plot of several schemes on a problem shows."""
+    parts = [f"{each.label}: {_span(each)}" for each in of_schemes(sections) if each.rungs]
+    return f"Errors on {problem} against {against}. {'; '.join(parts)}."
+
+
+def _span(drawn: Drawn) -> str:
+    """Return the first and the last error that count, with their step sizes."""
+    points = zip(drawn.rungs, drawn.errors, strict=True)
+    said = [f"{error:.2g} at h = {rung.h:.2g}" for rung, error in points]
+    return f"from {said[0]} to {said[-1]}"
 
 
 def described_orders(section: Section) -> str:

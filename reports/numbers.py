@@ -20,11 +20,9 @@ def with_uncertainty(value: float | None, half_width: float | None) -> str:
         return "none"
     if not half_width or not math.isfinite(half_width):
         return f"{value:.6g}"
-    place = math.floor(math.log10(half_width))
-    if Decimal(half_width).scaleb(-place) < Decimal("1.95"):
-        place -= 1
+    place = _last_place(half_width)
     size = max(abs(value), half_width)
-    if 1e-4 <= size < 1e6 and -place <= MOST_DIGITS:
+    if not needs_power(value, half_width):
         digits = max(-place, 0)
         return f"{value:.{digits}f} ± {half_width:.{digits}f}"
     exponent = math.floor(math.log10(size))
@@ -33,17 +31,39 @@ def with_uncertainty(value: float | None, half_width: float | None) -> str:
     return f"({scaled:.{digits}f} ± {spread:.{digits}f})e{exponent:+03d}"
 
 
-def apart(value: float, half_width: float | None) -> tuple[str, str]:
+def needs_power(value: float, half_width: float | None) -> bool:
+    """Return whether a value is too small, too large or too well known to write it without one."""
+    if not half_width or not math.isfinite(half_width):
+        return False
+    size = max(abs(value), half_width)
+    return not (1e-4 <= size < 1e6 and -_last_place(half_width) <= MOST_DIGITS)
+
+
+def apart(value: float, half_width: float | None, power: bool) -> tuple[str, str]:
     """Return a value cut as `with_uncertainty` does it, and its uncertainty to as many digits.
 
-    >>> apart(3.2148e-5, 4.1e-7)
-    ('3.21e-05', '4e-07')
+    With a `power` of ten or without, so that a column can keep to one notation; a value that is
+    lost in its uncertainty is '0'.
+
+    >>> apart(3.2148e-3, 4.1e-7, power=True)
+    ('3.2148e-03', '4e-07')
+    >>> apart(3.2148e-3, 4.1e-5, power=False)
+    ('0.00321', '4e-05')
     """
-    shown = with_uncertainty(value, half_width)
-    inside, _, power = shown.partition(")") if shown.startswith("(") else (shown, "", "")
-    first, _, second = inside.lstrip("(").partition(" ± ")
-    digits = len(second.replace(".", "").strip("0")) - 1
-    return first + power, f"{half_width:.{max(digits, 0)}e}" if second else ""
+    if not half_width or not math.isfinite(half_width):
+        return f"{value:.6g}", ""
+    place = _last_place(half_width)
+    uncertainty = f"{half_width:.{math.floor(math.log10(half_width)) - place}e}"
+    if round(Decimal(value).scaleb(-place)) == 0:
+        return "0", uncertainty
+    digits = math.floor(math.log10(abs(value))) - place if power else -place
+    return f"{value:.{max(digits, 0)}{'e' if power else 'f'}}", uncertainty
+
+
+def _last_place(half_width: float) -> int:
+    """Return the power of ten of the last digit: the first of a half-width, the second of a 1."""
+    place = math.floor(math.log10(half_width))
+    return place - 1 if Decimal(half_width).scaleb(-place) < Decimal("1.95") else place
 
 
 def order(value: float | None) -> str:

@@ -3,7 +3,7 @@
 from collections.abc import Sequence
 
 from sdebench.reports import numbers
-from sdebench.reports.tables import Table
+from sdebench.reports.tables import Table, error_of
 
 from sdebench.evidence import ErrorConstant, Result
 
@@ -16,7 +16,7 @@ def orders_table(rows: Sequence[Result]) -> Table:
     """
     body = [
         (
-            f"{row.kind}, {row.functional}" if row.functional else row.kind,
+            error_of(row),
             numbers.claimed(row.claimed),
             numbers.measured_order(row.order, row.low, row.high, row.exact),
             "" if row.extrapolated is None else numbers.order(row.extrapolated),

@@ -75,6 +75,7 @@ def facts(p: Provenance) -> list[tuple[str, str]]:
         "looks": "until decided" if p.looks is None else str(p.looks),
         "took": f"{p.seconds:.1f} s on {p.threads} thread{'s' if p.threads > 1 else ''}",
         "revision": (p.revision or "no repository").replace("-dirty", ", and changes since"),
+        **{f"SHA-256 of {file}": digest for file, digest in p.files.items()},
         "sdebench": p.sdebench,
         "NumPy": p.numpy,
         "Python": p.python,

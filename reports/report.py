@@ -5,12 +5,13 @@ All is made before the first file is put in place; what a folder held before sta
 
 import os
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from sdebench.reports import export, figures, render, summary
+from sdebench.reports.check_table import check_table
 from sdebench.reports.errors_table import errors_table
 from sdebench.reports.folder import check_folder, put
 from sdebench.reports.inline import inline_svg
@@ -40,7 +41,8 @@ def report(evidences: Sequence[Evidence]) -> dict[str, bytes]:
     found = sections(evidences)
     problems = by_problem(found)
     of_pairs = {section.name: _figures(section) for section in found}
-    of_problems = {problem: _side_by_side(problem, own) for problem, own in problems.items()}
+    among = list(dict.fromkeys(section.scheme for section in found))
+    of_problems = {name: _side_by_side(name, own, among) for name, own in problems.items()}
     plans = [plan for own in (*of_pairs.values(), *of_problems.values()) for plan in own]
     contents, shown = _drawn(plans)
     tables = {section.name: _tables(section, contents) for section in found}
@@ -91,7 +93,7 @@ def _add(contents: dict[str, bytes], name: str, table: Table, csv: str) -> tuple
 
 
 def _figures(section: Section) -> list[Planned]:
-    if not any(rung.error and rung.counts for row in section.measured for rung in row.rungs):
+    if not section.has_errors:
         return []
     return [
         Planned(
@@ -110,21 +112,22 @@ def _figures(section: Section) -> list[Planned]:
     ]
 
 
-def _side_by_side(problem: str, own: Sequence[Section]) -> list[Planned]:
+def _side_by_side(problem: str, own: Sequence[Section], among: Sequence[str]) -> list[Planned]:
     name = own[0].name.partition("--")[2]
-    schemes = ", ".join(section.scheme for section in own)
+    left_out = [section.scheme for section in own if not section.has_errors]
+    said = f" Without errors to draw: {', '.join(left_out)}." if left_out else ""
     plans = [
         Planned(
             f"schemes--{name}--convergence",
-            partial(figures.comparison, own),
-            "Strong errors filled, weak errors of the first functional hollow.",
-            f"Errors of {schemes} on {problem} against the step size.",
+            partial(figures.comparison, own, among),
+            f"Strong errors filled, weak errors of the first functional hollow.{said}",
+            figures.described_together(problem, own, "the step size"),
         ),
         Planned(
             f"schemes--{name}--cost",
-            partial(figures.cost, own),
-            "Errors against the time that a path takes on one thread, with drawing its noise.",
-            f"Errors of {schemes} on {problem} against the time of a path.",
+            partial(figures.cost, own, among),
+            f"Errors against the time that a path takes on one thread, noise and all.{said}",
+            figures.described_together(problem, own, "the time of a path"),
         ),
     ]
     timed = any(row.cost.step_seconds for section in own for row in section.measured)
@@ -144,9 +147,10 @@ def _tables(section: Section, contents: dict[str, bytes]) -> list[tuple[str, Tab
             shown.append(_add(contents, name, table, export.rungs_csv(rows)))
     for row in section.one_step:
         name = f"{section.name}--one-step-{row.bears_on}"
-        shown.append(_add(contents, name, terms_table(row), export.terms_csv(row)))
+        table = replace(terms_table(row), title=f"One step, {row.bears_on}: limits as h → 0")
+        shown.append(_add(contents, name, table, export.terms_csv(row)))
     if section.checks:
-        table = errors_table("Sample that the errors above were held against", section.checks)
+        table = check_table(section.checks, section.measured)
         csv = export.rungs_csv(section.checks)
         shown.append(_add(contents, f"{section.name}--check", table, csv))
     return shown

@@ -5,6 +5,8 @@ import unicodedata
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
+from sdebench.reports.tables import checks, reasons_for_sampling
+
 from sdebench.evidence import ClaimResult, Evidence, Result
 from sdebench.verdict import Verdict
 
@@ -44,22 +46,16 @@ class Section:
         return [r for r in self.rows if r.kind in ERRORS and r.rungs and not r.check]
 
     @property
+    def has_errors(self) -> bool:
+        """Whether there is an error that counts, and can be drawn."""
+        return any(rung.error and rung.counts for row in self.measured for rung in row.rungs)
+
+    @property
     def notes(self) -> list[str]:
         """What problem and scheme are, the contract, why errors were sampled, what checked them."""
-        why = dict.fromkeys(row.why_sampled for row in self.measured if row.why_sampled)
         kept = [row.sentence for row in self.rows if row.kind == "contract"]
-        notes = [*self.about, *kept, *(f"Sampled, since {reason}." for reason in why)]
-        held = [row for row in self.checks if row.trusted]
-        if held:
-            paths, finest = held[0].cost.paths, max(r.steps for row in held for r in row.rungs)
-            notes.append(
-                f"Propagated errors agree with a sample of {paths} paths, on rungs to {finest} "
-                "steps: a difference that chance brings once in a million runs ends the run."
-            )
-        spared = [row.functional or row.kind for row in self.checks if not row.trusted]
-        if spared:
-            notes.append(f"Too heavy in its tail to be held against a sample: {', '.join(spared)}.")
-        return notes
+        found = [*self.about, *kept, *reasons_for_sampling(self.rows), checks(self.rows)]
+        return [note for note in found if note is not None]
 
     @property
     def checks(self) -> list[Result]:

@@ -1,6 +1,6 @@
 """The tables of a piece of evidence as headings and rows of text, for every view to show."""
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 from sdebench.reports import numbers
@@ -36,6 +36,12 @@ def claims_table(evidence: Evidence) -> Table:
     return Table("", headings, rows, frozenset({3}))
 
 
+def error_of(row: Result) -> str:
+    """Return what the errors of a row are of: 'strong', or 'weak, mean'."""
+    what = row.functional or ("largest on the grid" if row.at == "grid" else "")
+    return f"{row.kind}, {what}" if what else row.kind
+
+
 def rungs_table(result: Result) -> Table:
     """Return one row a rung: steps, error, local order, and whether it counts."""
     rows = [
@@ -50,12 +56,8 @@ def rungs_table(result: Result) -> Table:
         )
         for rung in result.rungs
     ]
-    what = result.functional or ("largest on the grid" if result.at == "grid" else "")
-    title = ", ".join(
-        part
-        for part in (f"{result.scheme} on {result.problem}", result.kind, what, result.route)
-        if part
-    )
+    names = (f"{result.scheme} on {result.problem}", error_of(result), result.route)
+    title = ", ".join(filter(None, names))
     headings = ("steps", "h", "error", "local order", "counts")
     return Table(title, headings, rows, frozenset({0, 1, 2, 3}))
 
@@ -73,7 +75,7 @@ def terms_table(result: Result) -> Table:
         for term in result.terms
     ]
     title = f"{result.scheme} on {result.problem}, one step, {result.bears_on}: limits as h → 0"
-    headings = ("term", "yours", "the SDE", "", "where")
+    headings = ("term", "scheme", "SDE", "verdict", "where")
     return Table(title, headings, rows, frozenset({1, 2}))
 
 
@@ -83,10 +85,10 @@ def refuted_by_terms(result: Result) -> bool:
     return result.kind == "one-step" and result.verdict is Verdict.REFUTED and wrong
 
 
-def reasons_for_sampling(evidence: Evidence) -> list[str]:
+def reasons_for_sampling(rows: Iterable[Result]) -> list[str]:
     """Return a sentence for each reason why something could not be propagated."""
     found: dict[tuple[str, str], list[str]] = {}
-    for row in evidence.results:
+    for row in rows:
         if row.why_sampled is not None:
             done = "Sampled" if row.route == "sampled" else "Not propagated"
             pairs = found.setdefault((done, row.why_sampled), [])
@@ -96,14 +98,15 @@ def reasons_for_sampling(evidence: Evidence) -> list[str]:
     return [f"{done}, since {why}: {', '.join(pairs)}." for (done, why), pairs in found.items()]
 
 
-def checks(evidence: Evidence) -> str | None:
+def checks(rows: Iterable[Result]) -> str | None:
     """Return the sentence on samples that propagated errors were held against, if there are any."""
-    rows = [row for row in evidence.results if row.check]
+    rows = [row for row in rows if row.check]
     held = [row for row in rows if row.trusted]
     if not rows:
         return None
     spared = len(rows) - len(held)
-    tail = f"; {spared} rows with too heavy a tail were not compared" if spared else ""
+    several = "rows with too heavy a tail were" if spared > 1 else "row with too heavy a tail was"
+    tail = f"; {spared} {several} not compared" if spared else ""
     if not held:
         return f"No propagated error could be held against a sample{tail}."
     paths = sum({row.cost.sample: row.cost.paths for row in held}.values())

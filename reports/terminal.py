@@ -79,7 +79,7 @@ def show_evidence(evidence: Evidence, on: Console) -> None:
             show_table(rungs_table(row), on)
             if row.verdict is Verdict.SUPPORTED:
                 on.print(Text(row.sentence), soft_wrap=True)
-    notes = [*reasons_for_sampling(evidence), checks(evidence)]
+    notes = [*reasons_for_sampling(evidence.results), checks(evidence.results)]
     on.print()
     for note in filter(None, notes):
         on.print(Text(note), soft_wrap=True)

@@ -149,7 +149,8 @@ class ClaimResult(msgspec.Struct, frozen=True, kw_only=True):
 class Provenance(msgspec.Struct, frozen=True, kw_only=True):
     """How the evidence was made, enough to make it again to the bit.
 
-    `revision` is that of the repository in the working directory, if there is one.
+    `revision` is that of the repository in the working directory, if there is one; `files` has the
+    SHA-256 of each file that a scheme or functional of a user's came from.
     """
 
     sdebench: str
@@ -167,6 +168,7 @@ class Provenance(msgspec.Struct, frozen=True, kw_only=True):
     threads: int
     seconds: float
     revision: str | None = None
+    files: dict[str, str] = {}
 
 
 class Evidence(msgspec.Struct, frozen=True, kw_only=True):

@@ -1,26 +1,18 @@
 """The study: schemes on problems, looked at until every claim is decided or a limit is reached."""
 
-import inspect
-import platform
-import shlex
 import time
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
-from datetime import UTC, datetime
-from typing import Literal
 
-import numpy as np
-
-from sdebench import discovery, ladder
+from sdebench import ladder
 from sdebench.assess import Levels
 from sdebench.claims import claim_results, settled
 from sdebench.detection import sensitivities
 from sdebench.errors import BadOption
-from sdebench.evidence import Evidence, Provenance
-from sdebench.functional import STANDARD
-from sdebench.integrator import Scheme
+from sdebench.evidence import Evidence
 from sdebench.ladder import Ladder
 from sdebench.pair import Pair, Routes
+from sdebench.provenance import ROUTES, Asked, Route, Wanted
 from sdebench.request import (
     FunctionalLike,
     ProblemLike,
@@ -31,16 +23,12 @@ from sdebench.request import (
     processors,
 )
 from sdebench.results import results
-from sdebench.revision import revision
 from sdebench.sample import Plan
 from sdebench.step_cost import step_costs
 from sdebench.verdict import overall
 
 MAX_LOOKS = 7  # two million paths on the last look
 DEFAULT_SEED = 1
-
-Route = Literal["propagated", "sampled"]
-ROUTES = ("propagated", "sampled")
 
 Progress = Callable[[str, int, int], None]
 
@@ -120,8 +108,10 @@ def measure(
         Plan(scheme, problem, rungs, chosen, seed, grid_maximum)
         for scheme, problem in chosen_pairs(schemes, on)
     ]
-    if route not in (None, "propagated", "sampled"):
+    if route not in (None, *ROUTES):
         raise BadOption("route", repr(route), "it is 'propagated', 'sampled', or left out for both")
+    wanted = Wanted(schemes is None, on is None, steps is None, route)
+    asked = Asked(plans, wanted, seed, confidence, tolerance, looks, budget)
     propagated = ladder.PROPAGATED if steps is None else rungs
     routes = Routes(route != "sampled", route != "propagated", propagated)
     pairs = [Pair(plan, routes) for plan in plans]
@@ -144,30 +134,7 @@ def measure(
     rounds = max((pair.looks for pair in pairs), default=0)
     return Evidence(
         verdict=overall([claim.verdict for claim in claims]),
-        provenance=Provenance(
-            **_versions(),
-            created=datetime.now(UTC).isoformat(timespec="seconds"),
-            command=_command(
-                plans, schemes is None, on is None, steps is None, route, levels, effort, rounds
-            ),
-            seed=seed,
-            confidence=confidence,
-            tolerance=tolerance,
-            steps=sorted(
-                {
-                    n
-                    for row in rows
-                    for rung in row.rungs
-                    if row.route in ROUTES
-                    for n in [rung.steps]
-                }
-            ),
-            looks=rounds,
-            budget=budget,
-            threads=n_threads,
-            seconds=time.monotonic() - begin,
-            revision=revision(),
-        ),
+        provenance=asked.provenance(rows, rounds, n_threads, time.monotonic() - begin),
         claims=claims,
         results=rows,
         about=_about(pairs),
@@ -183,17 +150,6 @@ def _about(pairs: Sequence[Pair]) -> dict[str, str]:
         found[problem.label] = f"{problem.title}, {problem.equation} (Itô), with {values}"
         found[scheme.label] = (scheme.doc or "").partition("\n")[0]
     return found
-
-
-def _versions() -> dict[str, str]:
-    from importlib.metadata import version  # heavy, and needed at the end of a study only
-
-    return {
-        "sdebench": version("sdebench"),
-        "numpy": np.__version__,
-        "python": platform.python_version(),
-        "platform": platform.platform(),
-    }
 
 
 def _time_steps(pairs: Sequence[Pair]) -> None:
@@ -253,45 +209,3 @@ class Count:
 
 def _silent(what: str, done: int, total: int) -> None:
     pass
-
-
-def _command(
-    plans: Sequence[Plan],
-    every_scheme: bool,
-    every_problem: bool,
-    own_steps: bool,
-    route: Route | None,
-    levels: Levels,
-    effort: Effort,
-    rounds: int,
-) -> str:
-    """Return the command that repeats a run to the bit: a budget is replaced by its rounds."""
-    words = ["sdebench", "measure"]
-    if not every_scheme:
-        words += dict.fromkeys(_typed(plan.scheme) for plan in plans)
-    if not every_problem:
-        for label in dict.fromkeys(plan.problem.label for plan in plans):
-            words += ["--on", label]
-    plan = plans[0] if plans else None
-    if plan is not None:
-        if not own_steps:
-            words += ["--steps", ",".join(map(str, plan.ladder.steps))]
-        for functional in plan.functionals[len(STANDARD) :]:
-            words += ["--functional", functional.name]
-        words += ["--grid-maximum"] if plan.grid_maximum else []
-        words += ["--route", route] if route is not None else []
-        words += ["--seed", str(plan.seed)]
-    words += ["--confidence", f"{levels.confidence!r}", "--tolerance", f"{levels.tolerance!r}"]
-    if effort.looks is not None or effort.budget is not None:
-        words += ["--looks", str(rounds)]
-    return shlex.join(words)
-
-
-def _typed(scheme: Scheme) -> str:
-    """Return what to type for a scheme; one that was passed as an object is named by its file."""
-    if scheme.typed is not None or discovery.schemes().get(scheme.name) is scheme:
-        return scheme.label
-    try:
-        return f"{inspect.getfile(scheme.step)}:{scheme.step.__name__}"
-    except (TypeError, AttributeError):
-        return scheme.label

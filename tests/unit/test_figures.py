@@ -1,5 +1,6 @@
 """Figures hold what the evidence does: each error where it belongs, told apart without colour."""
 
+import dataclasses
 import math
 
 import msgspec
@@ -102,6 +103,21 @@ def test_a_scheme_that_is_exact_has_figures():
         assert set(render.images(make(exact))) == {"svg", "pdf", "png"}
     for make in (figures.comparison, figures.cost):
         assert set(render.images(make([exact]))) == {"svg", "pdf", "png"}
+
+
+def test_a_scheme_keeps_its_colour_and_mark_whichever_others_are_drawn(section):
+    def looks_of(figure):
+        return [(line.get_color(), line.get_marker()) for line in drawn(figure)]
+
+    alone = looks_of(figures.comparison([section], ["another", section.scheme]))
+    assert set(alone) == {style.SCHEMES[1]}
+    assert set(looks_of(figures.comparison([section]))) == {style.SCHEMES[0]}
+
+
+def test_errors_that_are_the_same_show_as_one_mark_inside_of_another(section):
+    twin = dataclasses.replace(section, scheme="twin")
+    sizes = [line.get_markersize() for line in drawn(figures.comparison([section, twin]))]
+    assert sizes[0] == sizes[1] > sizes[2] == sizes[3]
 
 
 def test_files_have_the_same_bits_each_time(section):

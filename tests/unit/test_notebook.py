@@ -34,14 +34,20 @@ HOSTILE = '<script>alert("x")</script> & <b>'
 
 @pytest.mark.parametrize("field", ["scheme", "problem", "sentence"])
 def test_what_users_wrote_is_shown_as_text(refuted_evidence, field):
-    claims = [msgspec.structs.replace(c, **{field: HOSTILE}) for c in refuted_evidence.claims]
-    found = seen(msgspec.structs.replace(refuted_evidence, claims=claims))
+    replace = msgspec.structs.replace
+    claims = [replace(c, **{field: HOSTILE}) for c in refuted_evidence.claims]
+    rows = [replace(r, **{field: HOSTILE}) for r in refuted_evidence.results]
+    found = seen(replace(refuted_evidence, claims=claims, results=rows))
     assert "script" not in found.tags
     assert HOSTILE in found.text
 
 
-def test_there_is_a_row_for_the_headings_and_for_every_claim(supported_evidence):
-    assert seen(supported_evidence).tags.count("tr") == 1 + len(supported_evidence.claims)
+def test_there_is_a_row_for_every_claim_and_behind_a_click_for_every_rung(supported_evidence):
+    found = seen(supported_evidence)
+    assert found.tags[: found.tags.index("details")].count("tr") == 1 + 2
+    measured = [row for row in supported_evidence.results if row.rungs and not row.check]
+    assert found.tags.count("details") == len(measured)
+    assert found.tags.count("tr") == 1 + 2 + sum(1 + len(row.rungs) for row in measured)
 
 
 def test_the_verdict_is_told(supported_evidence):

@@ -1,8 +1,6 @@
 """The study: what is measured, how long, and what is told of it."""
 
-import shlex
 from dataclasses import replace
-from itertools import pairwise
 
 import msgspec
 import numpy as np
@@ -145,16 +143,6 @@ def test_the_steps_of_a_check_end_at_64_though_the_users_do_not():
     assert steps == {False: [16, 32, 64, 128, 256], True: [16, 32, 64]}
 
 
-@pytest.mark.parametrize("route", ["propagated", "sampled"])
-def test_the_command_names_a_route_that_was_taken_alone(route):
-    command = sb.measure("milstein", route=route, **QUICK).provenance.command
-    assert dict(pairwise(shlex.split(command)))["--route"] == route
-
-
-def test_the_command_of_a_run_by_both_routes_names_none(quick):
-    assert "--route" not in quick.provenance.command
-
-
 def test_the_seed_moves_what_is_sampled_and_nothing_that_is_propagated(quick):
     other = sb.measure("milstein", **QUICK, seed=2)
 
@@ -170,48 +158,6 @@ def test_progress_is_told_to_its_end():
     sb.measure("milstein", progress=lambda *args: told.append(args), **QUICK)
     assert {what.partition(":")[0] for what, _, _ in told} == {"milstein on gbm"}
     assert told[-1][1] == told[-1][2] > 0
-
-
-def test_the_provenance_holds_what_repeats_the_run():
-    p = sb.measure("milstein", **QUICK, seed=7, confidence=0.9, tolerance=0.2).provenance
-    assert (p.seed, p.confidence, p.tolerance, p.steps, p.threads) == (7, 0.9, 0.2, [4, 8, 16], 1)
-    assert p.sdebench
-    assert p.numpy
-    assert p.python
-
-
-def test_the_command_repeats_the_run():
-    evidence = sb.measure(
-        ["milstein", "euler-maruyama"],
-        on="gbm:mu=0.3",
-        looks=2,
-        threads=1,
-        steps=(4, 8, 16),
-        seed=7,
-        grid_maximum=True,
-        confidence=0.9,
-    )
-    words = shlex.split(evidence.provenance.command)
-    assert words[:4] == ["sdebench", "measure", "milstein", "euler-maruyama"]
-    options = dict(pairwise(words))
-    wanted = {"--on": "gbm:mu=0.3", "--steps": "4,8,16", "--looks": "2", "--seed": "7"}
-    assert wanted.items() <= options.items()
-    assert float(options["--confidence"]) == 0.9
-    assert "--grid-maximum" in words
-
-
-def test_a_budget_is_replaced_by_its_looks_in_the_command():
-    evidence = sb.measure("milstein", on="gbm", threads=1, steps=(4, 8, 16), budget=1e-9)
-    assert evidence.provenance.command.endswith("--looks 1")
-    assert "--budget" not in evidence.provenance.command
-
-
-def test_the_command_repeats_the_run_to_the_bit_where_a_parameter_has_many_digits():
-    problem = sb.problem("gbm", mu=0.123456789)
-    evidence = sb.measure("milstein", on=problem, looks=1, threads=1, steps=(4, 8, 16))
-    words = shlex.split(evidence.provenance.command)
-    again = sb.problem(words[words.index("--on") + 1])
-    assert dict(again.params) == dict(problem.params)
 
 
 def test_a_functional_that_raises_is_told_as_the_users(user_file):

@@ -98,7 +98,7 @@ def test_a_row_is_refuted_by_terms_if_a_needed_one_differs(refuted_evidence, sup
 
 def test_the_note_on_checks_counts_each_sample_once_and_names_the_finest_rung(supported_evidence):
     """Four rows rest on one sample of two blocks of 16384 paths."""
-    assert checks(supported_evidence) == (
+    assert checks(supported_evidence.results) == (
         "Propagated errors agree with a check on 32768 sampled paths (4 rows, rungs to 64 steps)."
     )
 
@@ -111,7 +111,7 @@ def test_samples_of_several_pairs_add_up_in_the_note_on_checks(supported_evidenc
         for r in supported_evidence.results
     ]
     both = msgspec.structs.replace(supported_evidence, results=twice)
-    assert "on 65536 sampled paths (8 rows" in checks(both)
+    assert "on 65536 sampled paths (8 rows" in checks(both.results)
 
 
 def test_a_check_that_was_not_held_against_anything_is_not_said_to_agree(supported_evidence):
@@ -121,11 +121,11 @@ def test_a_check_that_was_not_held_against_anything_is_not_said_to_agree(support
         for r in supported_evidence.results
     ]
     evidence = msgspec.structs.replace(supported_evidence, results=rows)
-    assert "(4 rows" not in checks(evidence)
+    assert "(4 rows" not in checks(evidence.results)
 
 
 def test_without_a_check_there_is_no_note_on_it(sampled_evidence):
-    assert checks(sampled_evidence) is None
+    assert checks(sampled_evidence.results) is None
 
 
 def test_each_reason_for_sampling_is_one_sentence_with_its_pairs(sampled_evidence):
@@ -137,11 +137,11 @@ def test_each_reason_for_sampling_is_one_sentence_with_its_pairs(sampled_evidenc
         for name, why in [("a", late), ("a", late), ("b", late), ("a", rough)]
     ]
     evidence = msgspec.structs.replace(sampled_evidence, results=rows)
-    assert reasons_for_sampling(evidence) == [
+    assert reasons_for_sampling(evidence.results) == [
         "Sampled, since gbm depends on time: a on gbm, b on gbm.",
         "Sampled, since f bends: a on gbm.",
     ]
 
 
 def test_what_was_asked_to_be_sampled_gives_no_reason(sampled_evidence):
-    assert reasons_for_sampling(sampled_evidence) == []
+    assert reasons_for_sampling(sampled_evidence.results) == []
