@@ -71,7 +71,7 @@ def facts(p: Provenance) -> list[tuple[str, str]]:
         "seed": str(p.seed),
         "confidence": f"{p.confidence:g}",
         "tolerance in orders": f"{p.tolerance:g}",
-        "steps": ", ".join(map(str, p.steps)),
+        "steps of all rungs": ", ".join(map(str, p.steps)),
         "looks": "until decided" if p.looks is None else str(p.looks),
         "took": f"{p.seconds:.1f} s on {p.threads} thread{'s' if p.threads > 1 else ''}",
         "revision": (p.revision or "no repository").replace("-dirty", ", and changes since"),

@@ -142,7 +142,9 @@ def _tables(section: Section, contents: dict[str, bytes]) -> list[tuple[str, Tab
     for kind in ("strong", "weak"):
         rows = [row for row in section.measured if row.kind == kind]
         if rows:
-            table = errors_table(f"{kind.capitalize()} error", rows)
+            paths = {row.cost.paths for row in rows if row.route == "sampled"}
+            sample = "".join(f", sampled on {n} paths" for n in paths)
+            table = errors_table(f"{kind.capitalize()} error{sample}", rows)
             name = f"{section.name}--{kind}"
             shown.append(_add(contents, name, table, export.rungs_csv(rows)))
     for row in section.one_step:

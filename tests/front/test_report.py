@@ -185,6 +185,21 @@ def test_the_command_on_the_page_gives_the_same_bits(typed, measured, folder):
     assert again.claims == first.claims
 
 
+def test_what_was_sampled_says_on_how_many_paths(typed, folder):
+    words = ("--on", "gbm", "--route", "sampled", *QUICK)
+    assert typed("measure", "milstein", *words, "--save", "e.json", "--report", "out").code == 0
+    (paths,) = {r.cost.paths for r in sb.load("e.json").results if r.route == "sampled"}
+    page = (folder / "out" / "report.html").read_text()
+    for kind in ("Strong", "Weak"):
+        assert f"<caption>{kind} error, sampled on {paths} paths " in page
+
+
+def test_a_scheme_without_errors_to_draw_is_named_beside_those_drawn(typed, folder):
+    typed("measure", "exact-ou", "milstein", "--on", "ou", *QUICK, "--report", "out")
+    page = (folder / "out" / "report.html").read_text()
+    assert page.count("Without errors to draw: exact-ou.") == 2
+
+
 KINDS = {
     "a broken contract": ("my.py:step", "gbm"),
     "nothing that applies": ("exact-ou", "gbm"),

@@ -18,13 +18,10 @@ from sdebench.reports.report import write_report
 import sdebench as sb
 
 CHROMIUM = shutil.which("chromium")
-pytestmark = [
-    pytest.mark.xdist_group("browser"),  # so that one worker builds the report, once
-    pytest.mark.skipif(
-        CHROMIUM is None and os.environ.get("SDEBENCH_BROWSER") != "required",
-        reason="no Chromium here; .ci/run installs one",
-    ),
-]
+pytestmark = pytest.mark.skipif(
+    CHROMIUM is None and os.environ.get("SDEBENCH_BROWSER") != "required",
+    reason="no Chromium here; .ci/run installs one",
+)
 FLAGS = [
     *("--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run"),
     *("--disable-background-networking", "--disable-component-update", "--disable-sync"),
