@@ -122,4 +122,4 @@ class CannotWrite(SdebenchError):
     """A file that cannot be written; for evidence, found out before anything is measured."""
 
     def __init__(self, path: str, why: str) -> None:
-        super().__init__(f"Cannot write '{path}': {why}. Name a file in a folder you may write to.")
+        super().__init__(f"Cannot write '{path}': {why}. Name another place, one that you may write to.")
