@@ -32,20 +32,19 @@ def page(
     problems: Sequence[tuple[str, Sequence[Shown]]],
 ) -> str:
     """Return the page; `figures` and `tables` are by the names of sections."""
-    folder = resources.files("sdebench.reports") / "templates"
     environment = Environment(
         autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True
     )
     environment.filters["typeset"] = numbers.typeset
     environment.filters["claimed"] = numbers.claimed
-    table = environment.from_string((folder / "table.html").read_text("utf-8"))
+    table = environment.from_string(resource("table.html"))
 
     def shown(named: tuple[str, Table]) -> Markup:
         return Markup(table.render(name=named[0], table=named[1], files=FILES))
 
-    template = environment.from_string((folder / "report.html").read_text("utf-8"))
+    template = environment.from_string(resource("report.html"))
     return template.render(
-        css=Markup((folder / "report.css").read_text("utf-8")),
+        css=Markup(resource("report.css")),
         verdict=summary.verdict_sentence(sections),
         faults=summary.faults(sections),
         kinds=summary.kinds(sections),
@@ -62,6 +61,11 @@ def page(
         shown=shown,
         version=provenances[0].sdebench,
     )
+
+
+def resource(name: str) -> str:
+    """Return the text of a template or style sheet."""
+    return (resources.files("sdebench.reports") / "templates" / name).read_text("utf-8")
 
 
 def facts(p: Provenance) -> list[tuple[str, str]]:

@@ -16,6 +16,7 @@ from rich.progress import BarColumn, Progress, TaskProgressColumn, TextColumn
 from rich.table import Table as Grid
 from rich.text import Text
 from sdebench.reports.advice import advice_table, comparison_table
+from sdebench.reports.gate_tables import gate_sentence, gate_table
 from sdebench.reports.tables import (
     Table,
     checks,
@@ -29,6 +30,7 @@ from sdebench.reports.tables import (
 from sdebench.advise import Advice
 from sdebench.compare import Comparison
 from sdebench.evidence import ClaimResult, Evidence, Result
+from sdebench.gate import Gated
 from sdebench.verdict import Verdict
 
 Report = Callable[[str, int, int], None]
@@ -58,6 +60,21 @@ def show_sentences(evidence: Evidence, on: Console) -> None:
     for claim in evidence.claims:
         if claim.verdict is not Verdict.SUPPORTED:
             _show_sentence(claim, on)
+
+
+def show_claim(evidence: Evidence, claim: ClaimResult, on: Console) -> None:
+    """Print the sentence on a claim, and the errors and terms that bear on it."""
+    _show_sentence(claim, on)
+    pair = claim.scheme, claim.problem
+    for row in evidence.results:
+        if (row.scheme, row.problem) != pair or row.bears_on != claim.kind or row.check:
+            continue
+        if refuted_by_terms(row):
+            on.print()
+            show_table(terms_table(row), on)
+        elif row.rungs and row.kind != "one-step":
+            on.print()
+            show_table(rungs_table(row), on)
 
 
 def show_evidence(evidence: Evidence, on: Console) -> None:
@@ -100,6 +117,18 @@ def show_comparisons(comparisons: Sequence[Comparison], on: Console) -> None:
         show_table(comparison_table(comparison), on)
         on.print(Text(comparison.sentence), soft_wrap=True)
         on.print()
+
+
+def show_gate(gated: Gated, on: Console) -> None:
+    """Print what is red or in doubt, what else moved, and the outcome."""
+    for sentence in (*gated.sentences, *gated.notes):
+        on.print(Text(sentence), soft_wrap=True)
+    table = gate_table(gated, all_rows=False)
+    if table.rows:
+        on.print()
+        show_table(table, on)
+        on.print()
+    on.print(Text(gate_sentence(gated)), soft_wrap=True)
 
 
 def show_table(table: Table, on: Console) -> None:

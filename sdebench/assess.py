@@ -154,6 +154,21 @@ def measured(sample: Sample, row: Row, scale: float) -> Errors:
     )
 
 
+def parts(sample: Sample, row: Row) -> Array:
+    """Return what the equal parts of a sample give for the measures of a row, `(rungs, PARTS)`.
+
+    Weak errors are adjusted as in `measured`: the mean over the parts is the measure itself.
+    """
+    assert sample.tally is not None
+    tally, index = sample.tally, _rows(sample, row)
+    means = tally.parts / sample.n_blocks
+    if row.functional is None:
+        return means[index]
+    controls = list(sample.plan.rows.controls)
+    slopes = tally.moments.slopes(index, controls)
+    return means[index] - slopes.T @ means[controls]
+
+
 def check_references(
     sample: Sample, references: Sequence[tuple[float, float]], n_checks: int
 ) -> None:

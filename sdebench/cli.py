@@ -13,6 +13,7 @@ from typing import Any
 
 import click
 
+from sdebench import gate_cli
 from sdebench.errors import SdebenchError
 
 
@@ -231,6 +232,10 @@ def report(files: tuple[Path, ...], folder: Path) -> None:
     from sdebench.reports.report import write_report
 
     click.echo(write_report([load(file) for file in files], folder))
+
+
+for command in (gate_cli.gate, gate_cli.accept, gate_cli.trend):
+    cli.add_command(command)
 
 
 @cli.command()

@@ -118,8 +118,41 @@ class BadEvidenceFile(SdebenchError):
         super().__init__(f"'{path}' is not a readable evidence file: {why}.")
 
 
+class BadBaseline(SdebenchError):
+    """A baseline that cannot be read, or that this project was not measured as."""
+
+    def __init__(self, path: str, why: str) -> None:
+        super().__init__(f"'{path}' is no baseline to hold anything against: {why}.")
+
+
+class RefutedEvidence(SdebenchError):
+    """Evidence that was to be accepted as a baseline though it refutes a claim."""
+
+    exit_code = 1
+
+    def __init__(self, claims: Sequence[str]) -> None:
+        super().__init__(
+            f"Not accepted: {'; '.join(claims)} refuted. Mend it, lower the claim, or say "
+            "--refuted-too; the baseline stays as it was."
+        )
+
+
+class BadProject(SdebenchError):
+    """A table of what to guard that cannot be used; the sentence names the key's path."""
+
+    def __init__(self, path: str, why: str) -> None:
+        super().__init__(f"'{path}': {why}.")
+
+
+class BadHistory(SdebenchError):
+    """A history file that cannot be read or appended to."""
+
+    def __init__(self, path: str, why: str) -> None:
+        super().__init__(f"'{path}' cannot be used as a history: {why}.")
+
+
 class CannotWrite(SdebenchError):
     """A file that cannot be written; for evidence, found out before anything is measured."""
 
     def __init__(self, path: str, why: str) -> None:
-        super().__init__(f"Cannot write '{path}': {why}. Name another place, one that you may write to.")
+        super().__init__(f"Cannot write '{path}': {why}. Name a place that you may write to.")

@@ -6,13 +6,14 @@ written whole or not at all.
 
 import math
 import os
+from collections.abc import Collection
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
 import msgspec
 
 from sdebench.errors import BadEvidenceFile
-from sdebench.verdict import Verdict
+from sdebench.verdict import Verdict, overall
 from sdebench.whole_file import write_whole
 
 FORMAT: Literal["sdebench-evidence/1"] = "sdebench-evidence/1"
@@ -25,7 +26,8 @@ class Rung(msgspec.Struct, frozen=True, kw_only=True):
     """One step size: the error with its uncertainty.
 
     That is the half-width of an interval at the confidence C where the error is sampled, else a
-    numerical bound. `dropped` says why a propagated rung was.
+    numerical bound. `dropped` says why a propagated rung was. `parts` are the means of equal parts
+    of a sample, of squares if strong: what pairs a later run on the same paths with this one.
     """
 
     steps: int
@@ -39,6 +41,7 @@ class Rung(msgspec.Struct, frozen=True, kw_only=True):
     largest_share: float | None = None
     non_finite: Count = 0
     dropped: str | None = None
+    parts: list[float] = []
 
 
 class Term(msgspec.Struct, frozen=True, kw_only=True):
@@ -150,7 +153,8 @@ class Provenance(msgspec.Struct, frozen=True, kw_only=True):
     """How the evidence was made, enough to make it again to the bit.
 
     `revision` is that of the repository in the working directory, if there is one; `files` has the
-    SHA-256 of each file that a scheme or functional of a user's came from.
+    SHA-256 of each file that a scheme or functional of a user's came from; `stream` is a digest of
+    the first normals that the seed gives.
     """
 
     sdebench: str
@@ -169,6 +173,7 @@ class Provenance(msgspec.Struct, frozen=True, kw_only=True):
     seconds: float
     revision: str | None = None
     files: dict[str, str] = {}
+    stream: str | None = None
 
 
 class Evidence(msgspec.Struct, frozen=True, kw_only=True):
@@ -217,6 +222,14 @@ def load(path: str | os.PathLike[str]) -> Evidence:
         raise BadEvidenceFile(shown, "it is nested too deeply") from None
     except msgspec.MsgspecError as cause:
         raise BadEvidenceFile(shown, str(cause)) from None
+
+
+def only(evidence: Evidence, pairs: Collection[tuple[str, str]]) -> Evidence:
+    """Return the part of evidence that is on some schemes and problems."""
+    claims = [c for c in evidence.claims if (c.scheme, c.problem) in pairs]
+    rows = [r for r in evidence.results if (r.scheme, r.problem) in pairs]
+    verdict = overall([claim.verdict for claim in claims])
+    return msgspec.structs.replace(evidence, claims=claims, results=rows, verdict=verdict)
 
 
 class _Header(msgspec.Struct):

@@ -64,13 +64,8 @@ class Moments:
         unbiased for normal batch means, with Student's t for their intervals (Lavenberg & Welch
         1981, Management Science 27, 322).
         """
-        y, c = np.asarray(rows), np.asarray(controls)
-        scatter_cc = self.scatter[np.ix_(c, c)]
-        scale = np.sqrt(np.diag(scatter_cc))
-        keep = scale > 0
-        c, scale = c[keep], scale[keep]
-        correlation = self.scatter[np.ix_(c, c)] / np.multiply.outer(scale, scale)
-        inverse = np.linalg.pinv(correlation, rcond=1e-10, hermitian=True)
+        y = np.asarray(rows)
+        c, scale, inverse = self._controls(controls)
         cross = self.scatter[np.ix_(c, y)] / scale[:, None]
         slopes = inverse @ cross
         offset = self.mean[c] / scale
@@ -81,3 +76,20 @@ class Moments:
         dof = self.count - 1 - len(c)
         leverage = 1 / self.count + float(offset @ inverse @ offset)
         return Estimate(self.mean[y] - slopes.T @ offset, residual / dof * leverage, dof)
+
+    def slopes(self, rows: Sequence[int], controls: Sequence[int]) -> Array:
+        """Return what `adjusted` subtracts of each control from each row, `(controls, rows)`."""
+        found = np.zeros((len(self.mean), len(rows)))
+        c, scale, inverse = self._controls(controls)
+        cross = self.scatter[np.ix_(c, np.asarray(rows))] / scale[:, None]
+        found[c] = inverse @ cross / scale[:, None]
+        wanted: Array = found[np.asarray(controls)]
+        return wanted
+
+    def _controls(self, controls: Sequence[int]) -> tuple[Array, Array, Array]:
+        """Return the control rows that vary, their scale, and the inverse of their correlation."""
+        c = np.asarray(controls)
+        scale = np.sqrt(np.diag(self.scatter)[c])
+        c, scale = c[scale > 0], scale[scale > 0]
+        correlation = self.scatter[np.ix_(c, c)] / np.multiply.outer(scale, scale)
+        return c, scale, np.linalg.pinv(correlation, rcond=1e-10, hermitian=True)

@@ -17,7 +17,7 @@ from sdebench.evidence import Provenance, Result
 from sdebench.functional import STANDARD
 from sdebench.integrator import Scheme
 from sdebench.revision import revision
-from sdebench.sample import Plan
+from sdebench.sample import Plan, stream_digest
 
 Route = Literal["propagated", "sampled"]
 ROUTES: tuple[Route, ...] = ("propagated", "sampled")
@@ -74,6 +74,7 @@ class Asked:
             seconds=seconds,
             revision=revision(),
             files=self.files,
+            stream=stream_digest(self.seed),
         )
 
     def _command(self, rounds: int) -> str:

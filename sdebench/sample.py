@@ -30,6 +30,7 @@ from sdebench.wiener import FUNCTIONALS, Noise, Stack, StepLaw, concatenate, in_
 # operations, short enough that the arrays of one step stay in a second-level cache.
 BLOCK = 16384
 BATCH = 512  # paths a batch mean
+PARTS = BLOCK // BATCH  # equal parts of a sample, each with its own means
 WINDOW = 16  # blocks in flight, so that memory does not grow with the number of paths
 
 
@@ -74,9 +75,13 @@ class Plan:
 
 @dataclass(frozen=True)
 class Tally:
-    """What paths add up to: batch moments, and per row the largest and the sum of squares."""
+    """What paths add up to: batch moments, and per row the largest and the sum of squares.
+
+    `parts`, shape `(rows, PARTS)`, are sums over blocks of the means of equal parts of a block.
+    """
 
     moments: Moments
+    parts: Array
     largest: Array
     squares: Array
     non_finite: Array
@@ -84,6 +89,7 @@ class Tally:
     def __add__(self, other: "Tally") -> "Tally":
         return Tally(
             self.moments + other.moments,
+            self.parts + other.parts,
             np.maximum(self.largest, other.largest),
             self.squares + other.squares,
             self.non_finite + other.non_finite,
@@ -201,7 +207,7 @@ class Gathered:
 
     def __init__(self, n_rows: int, n_measured: int) -> None:
         self.n_done = 0
-        self.batches = np.empty((n_rows, BLOCK // BATCH))
+        self.batches = np.empty((n_rows, PARTS))
         self.largest = np.empty(n_measured)
         self.squares = np.empty(n_measured)
 
@@ -218,7 +224,14 @@ class Gathered:
         lost = np.zeros(len(states))
         if not np.all(np.isfinite(self.batches)):
             lost += [BLOCK - np.count_nonzero(np.isfinite(x)) for x in states]
-        return Tally(Moments.of(self.batches / BATCH), self.largest, self.squares, lost)
+        means = self.batches / BATCH
+        return Tally(Moments.of(means), means, self.largest, self.squares, lost)
+
+
+def stream_digest(seed: int) -> str:
+    """Return a digest of the first normals that a seed gives, to tell streams apart."""
+    normals = np.random.Generator(np.random.SFC64(np.random.SeedSequence(seed)))
+    return hashlib.sha256(normals.standard_normal(64).tobytes()).hexdigest()[:16]
 
 
 def _guarded(functional: Functional) -> Callable[[Array], Array]:

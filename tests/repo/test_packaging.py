@@ -13,7 +13,15 @@ from pathlib import Path
 import pytest
 
 SHIPPED = ("sdebench", "schemes", "reports")
-BUILT_FROM = (*SHIPPED, "tests", "README.md", "DEVELOPERS.md", "LICENSE", "pyproject.toml")
+BUILT_FROM = (
+    *SHIPPED,
+    "sdebench_pytest.py",
+    "tests",
+    "README.md",
+    "DEVELOPERS.md",
+    "LICENSE",
+    "pyproject.toml",
+)
 BACKEND = (
     "import setuptools.build_meta as backend, sys; "
     "place = sys.argv[1]; backend.build_sdist(place); backend.build_wheel(place)"
@@ -93,10 +101,14 @@ def catalogue_of(tmp_path):
     return run
 
 
-def test_the_wheel_puts_one_package_and_its_description_at_the_top(root, wheel_names):
+def test_the_wheel_puts_the_package_its_plugin_and_its_description_at_the_top(root, wheel_names):
     version = tomllib.loads((root / "pyproject.toml").read_text())["project"]["version"]
     described = f"sdebench-{version}.dist-info"
-    assert {name.split("/")[0] for name in wheel_names} == {"sdebench", described}
+    assert {name.split("/")[0] for name in wheel_names} == {
+        "sdebench",
+        "sdebench_pytest.py",
+        described,
+    }
 
 
 def test_the_wheel_holds_exactly_the_modules_of_the_repository(root, wheel_names):

@@ -9,10 +9,12 @@ import sys
 import tomllib
 from pathlib import Path
 
+import msgspec
 import pytest
 
 from sdebench import Verdict
 from sdebench.cli import cli
+from sdebench.project import Guarded
 
 ROOT = Path(__file__).parents[2]
 README = (ROOT / "README.md").read_text()
@@ -53,6 +55,11 @@ def test_the_blocks_are_those_that_are_tested_here():
         ("run", "python"),
         ("run", "report"),
         ("run", "figures"),
+        ("file", "pyproject.toml"),
+        ("run", "accept"),
+        ("run", "gate"),
+        ("file", "gate.yml"),
+        ("file", "test_desk.py"),
     }
 
 
@@ -109,6 +116,55 @@ def test_the_desks_report_is_written_and_its_figure_restyled(desk):
     page = (folder / "report" / "report.html").read_text()
     assert "All 4 claims of 1 scheme on 2 problems are supported." in page
     assert (folder / "convergence.pdf").read_bytes().startswith(b"%PDF")
+
+
+def gated(desk, script: str, **variables: str) -> subprocess.CompletedProcess[str]:
+    """Run a pipeline's commands but those that set it up: here they are done."""
+    folder, environment = desk
+    setup = re.compile(r"^python.*(venv|pip install).*$", re.MULTILINE)
+    return subprocess.run(
+        ["sh", "-ec", setup.sub("", script)],
+        cwd=folder,
+        env=environment | variables,
+        capture_output=True,
+        text=True,
+    )
+
+
+def test_the_pipelines_are_green_on_what_was_accepted_and_red_on_a_regression(desk):
+    folder, _ = desk
+    accepted = gated(desk, BLOCKS["run", "accept"])
+    assert accepted.returncode == 0
+    assert accepted.stdout.splitlines()[-1].startswith("Green: 6 claims (6 supported as accepted)")
+    (step,) = re.findall(r"^      - run: (sdebench gate.*)$", BLOCKS["file", "gate.yml"], re.M)
+    scripts = [BLOCKS["run", "gate"], step]
+    summaries = ["gate.md", "job.md"]
+    for script, summary in zip(scripts, summaries, strict=True):
+        assert gated(desk, script, GITHUB_STEP_SUMMARY="job.md").returncode == 0
+        assert (folder / summary).read_text().startswith("**Green: ")
+    spoilt = BLOCKS["file", "desk.py"].replace("0.5 * b", "0.25 * b")
+    (folder / "desk.py").write_text(spoilt)
+    for script, summary in zip(scripts, summaries, strict=True):
+        assert gated(desk, script, GITHUB_STEP_SUMMARY="job.md").returncode == 1
+        assert (folder / summary).read_text().startswith("**Red: ")
+        assert (folder / "gate-report" / "report.html").is_file()
+
+
+def test_the_desks_tests_pass_and_its_claims_are_collected(desk):
+    folder, environment = desk
+    words = [sys.executable, "-m", "pytest", "-q", "-p", "no:cacheprovider", "--guarded-claims"]
+    done = subprocess.run(
+        [*words, "test_desk.py"], cwd=folder, env=environment, capture_output=True, text=True
+    )
+    assert done.returncode == 0
+    assert "8 passed" in done.stdout
+
+
+def test_the_keys_that_are_told_are_those_of_the_table():
+    told = re.search(r"Further keys of the table: (.*?), each as", README, re.DOTALL)
+    assert told is not None
+    named = set(re.findall(r"`([a-z-]+)`", told[1])) | {"schemes", "problems"}
+    assert named == {field.encode_name for field in msgspec.structs.fields(Guarded)}
 
 
 def test_the_command_that_measures_ends_in_a_valid_one():

@@ -149,3 +149,13 @@ def test_adjusted_intervals_cover_as_often_as_they_say():
         covered += abs(found.means[0]) <= width
     low, high = binomial_band(n_samples, 0.95)
     assert low <= covered <= high
+
+
+def test_slopes_are_those_of_the_regression(batches):
+    """By NumPy's least squares, of rows 3 and 0 on rows 1 and 2; a constant control has none."""
+    still = np.vstack([batches, np.ones(N)])
+    found = Moments.of(still).slopes([3, 0], [1, 2, 4])
+    centred = batches - batches.mean(axis=1, keepdims=True)
+    expected, *_ = np.linalg.lstsq(centred[[1, 2]].T, centred[[3, 0]].T, rcond=None)
+    assert close(found[:2], expected, 64 * N)
+    assert np.all(found[2] == 0.0)
