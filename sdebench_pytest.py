@@ -30,12 +30,12 @@ def guarded_options(pytestconfig: pytest.Config) -> dict[str, Any]:
 @pytest.fixture
 def assert_converges(request: pytest.FixtureRequest) -> Callable[..., Any]:
     """`sdebench.testing.assert_converges`, with the project's options if it has a table."""
-    from sdebench.errors import BadProject
+    from sdebench.errors import NoProject
     from sdebench.testing import assert_converges
 
     try:
         options = request.getfixturevalue("guarded_options")
-    except BadProject:
+    except NoProject:
         options = {}
 
     def assert_with_options(*arguments: Any, **own: Any) -> Any:

@@ -77,17 +77,17 @@ def constants(own: Series) -> "Figure":
 
 @styled
 def costs(own: Series) -> "Figure":
-    """Return the time of one step of a path over the runs."""
-    figure, axes = new_axes("run", "time of a step, in seconds")
+    """Return the time of one step of a path over the runs, in microseconds."""
+    figure, axes = new_axes("run", "time of a step, in microseconds")
     known = [p for p in own if p.step_seconds]
     axes.plot(
         [p.run for p in known],
-        [p.step_seconds or 0.0 for p in known],
+        [1e6 * (p.step_seconds or 0.0) for p in known],
         color=style.OCHRE,
         marker="s",
         linewidth=0.9,
     )
-    _frame(axes, [p.step_seconds for p in known if p.step_seconds])
+    _frame(axes, [1e6 * p.step_seconds for p in known if p.step_seconds])
     return figure
 
 

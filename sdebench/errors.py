@@ -1,8 +1,8 @@
 """What can go wrong in using the bench: each class takes the facts and writes the sentence.
 
-A scientific outcome is never an exception. Everything here but `BenchFault` is a wrong use or
-a bad input and ends a command with exit code 2; `BenchFault` says that the bench contradicts
-itself and ends it with 4.
+A scientific outcome is never an exception. Everything here is a wrong use or a bad input and ends
+a command with exit code 2, but for `BenchFault`, which says that the bench contradicts itself and
+ends it with 4, and `RefutedEvidence`, which was to be accepted as if it were not, with 1.
 """
 
 import traceback
@@ -142,6 +142,10 @@ class BadProject(SdebenchError):
 
     def __init__(self, path: str, why: str) -> None:
         super().__init__(f"'{path}': {why}.")
+
+
+class NoProject(BadProject):
+    """There is no table of what to guard, at a place or above it."""
 
 
 class BadHistory(SdebenchError):

@@ -9,7 +9,7 @@ from typing import Annotated, Any, Literal
 import msgspec
 
 from sdebench.discovery import find_functional, find_scheme
-from sdebench.errors import BadProject
+from sdebench.errors import BadProject, NoProject
 from sdebench.functional import Functional
 from sdebench.integrator import ClaimKind, Scheme
 from sdebench.problem import Problem
@@ -109,7 +109,7 @@ class Project:
 def find_project(start: Path) -> Project:
     """Return the project that a file or a folder belongs to, at it or above it.
 
-    Raises `BadProject` where there is none, or its table cannot be used.
+    Raises `NoProject` where there is none, `BadProject` where its table cannot be used.
     """
     if start.is_file():
         found = _table(start)
@@ -122,7 +122,7 @@ def find_project(start: Path) -> Project:
             found = _table(file) if file.is_file() else None
             if found is not None:
                 return Project(_checked(found, file), file)
-    raise BadProject(
+    raise NoProject(
         str(start),
         f"neither here nor above is there a {OWN}, or a {SHARED} with a table [{TABLE}]; write "
         'one, with schemes = ["my.py:step"]',

@@ -45,6 +45,8 @@ def main() -> None:
     report()
     memory()
     start_up()
+    assertion()
+    plugin()
 
 
 def sampled_ladder(name: str, aim: float, threads: int, ladder: Ladder = DEFAULT) -> None:
@@ -259,6 +261,43 @@ def show(what: str, ratios: list[float], aim: str) -> None:
     """Print the median of some ratios with their range and the aim."""
     middle = statistics.median(ratios)
     print(f"{what}: {middle:.2f} ({min(ratios):.2f} to {max(ratios):.2f})   (aim: {aim})")
+
+
+def assertion() -> None:
+    """One assertion on one scheme, after the imports, over importing NumPy."""
+    from sdebench.testing import assert_converges
+
+    def euler(sde, t, x, h, noise):
+        return x + sde.drift(t, x) * h + sde.diffusion(t, x) * noise.dw
+
+    def once() -> None:
+        assert_converges(euler, on="gbm", strong=0.5, weak=1.0)
+
+    once()
+    times = [(seconds(once), run([sys.executable, "-c", "import numpy"])) for _ in range(REPEATS)]
+    show("assert_converges on gbm / import numpy", [a / b for a, b in times], "0.3 s")
+    print(f"assert_converges on gbm: {statistics.median(a for a, _ in times):.3f} s   (aim: 0.3)")
+
+
+def plugin() -> None:
+    """Collecting a project that does not use the plugin, with it over without it."""
+    with tempfile.TemporaryDirectory() as folder:
+        with open(f"{folder}/test_plain.py", "w") as file:
+            file.write("def test_it():\n    pass\n")
+        words = [
+            sys.executable,
+            "-m",
+            "pytest",
+            "--collect-only",
+            "-q",
+            "--rootdir",
+            folder,
+            folder,
+        ]
+        times = [(run(words), run([*words, "-p", "no:sdebench"])) for _ in range(3 * REPEATS)]
+    show("pytest --collect-only with the plugin / without", [a / b for a, b in times], "20 ms")
+    added = statistics.median(a - b for a, b in times)
+    print(f"added by the plugin: {added * 1e3:.1f} ms   (aim: 20)")
 
 
 if __name__ == "__main__":

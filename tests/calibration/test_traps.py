@@ -23,7 +23,7 @@ from sdebench.verdict import Verdict
 
 pytestmark = pytest.mark.calibration
 
-N_SEEDS = 24
+N_SEEDS = 16
 LOOKS = 3  # some hundred thousand paths
 TRAPS = (
     "ou:theta=2,sigma=0.5,mean=0,x0=1",

@@ -17,7 +17,7 @@ import pytest
 
 import sdebench as sb
 from sdebench.baseline import baseline_of, load, save
-from sdebench.errors import CannotWrite
+from sdebench.errors import BadHistory, CannotWrite
 from sdebench.history import append, read
 
 WRITES = """
@@ -99,17 +99,20 @@ def test_two_gates_at_once_lose_no_run(tmp_path, evidence):
     assert runs == 50
 
 
-def test_a_disk_that_fills_up_is_told_and_the_old_baseline_stays(place):
+def test_a_disk_that_fills_up_is_told_and_the_old_files_stay(place, evidence):
     """By a limit on the size of files: a write beyond it fails as on a full disk."""
-    known = load(place / "b.json")
+    known, points = load(place / "b.json"), read(place / "h.db")
     soft, hard = resource.getrlimit(resource.RLIMIT_FSIZE)
     ignored = signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
     resource.setrlimit(resource.RLIMIT_FSIZE, (1000, hard))
     try:
         with pytest.raises(CannotWrite, match="File too large"):
             save(known, place / "b.json")
+        with pytest.raises(BadHistory, match="disk"):
+            append(place / "h.db", evidence, 0)
     finally:
         resource.setrlimit(resource.RLIMIT_FSIZE, (soft, hard))
         signal.signal(signal.SIGXFSZ, ignored)
     assert load(place / "b.json") == known
+    assert read(place / "h.db") == points
     assert not [name for name in os.listdir(place) if "partial" in name]

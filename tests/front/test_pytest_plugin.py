@@ -153,6 +153,9 @@ def test_a_wrong_table_is_one_sentence_where_it_is_asked_for_and_no_harm_elsewhe
     assert "there is no key tool.sdebench.seeds; the nearest is seed" in out
     assert "Traceback" not in out
     assert run(test_plain="def test_it():\n    pass\n")[0] == 0
+    uses = "def test_it(assert_converges):\n    pass\n"
+    code, out = run(test_plain=uses)
+    assert (code, "the nearest is seed" in out) == (1, True), "not the defaults, silently"
 
 
 def test_a_project_that_does_not_use_it_loads_none_of_it(project, clean_environment):

@@ -12,9 +12,9 @@ from sdebench import errors
     [k for k in vars(errors).values() if isinstance(k, type) and issubclass(k, Exception)],
     ids=lambda k: k.__name__,
 )
-def test_every_error_but_a_fault_of_the_bench_ends_with_code_two(kind):
+def test_every_error_but_a_fault_of_the_bench_and_a_refuted_claim_ends_with_code_two(kind):
     assert issubclass(kind, errors.SdebenchError)
-    assert kind.exit_code == (4 if kind is errors.BenchFault else 2)
+    assert kind.exit_code == {errors.BenchFault: 4, errors.RefutedEvidence: 1}.get(kind, 2)
 
 
 def test_an_unknown_name_shows_the_nearest_one():

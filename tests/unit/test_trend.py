@@ -39,7 +39,7 @@ def test_the_figure_of_constants_holds_them_with_their_bounds():
 
 def test_the_figure_of_costs_holds_the_times():
     axes = trend.costs([p for p in POINTS if p.kind == "strong"]).axes[0]
-    assert list(axes.lines[0].get_ydata()) == [1e-8, 2e-8]
+    assert list(axes.lines[0].get_ydata()) == [1e6 * 1e-8, 1e6 * 2e-8]
 
 
 def test_the_page_has_a_figure_of_each_constant_that_there_is(tmp_path):
