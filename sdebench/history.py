@@ -4,6 +4,7 @@ SQLite's own locks keep two runs at once apart; a run is one transaction, so tha
 ended half-way leaves nothing behind.
 """
 
+import os
 import sqlite3
 from collections.abc import Iterator
 from contextlib import closing, contextmanager
@@ -94,9 +95,14 @@ def read(path: Path) -> list[Point]:
 
 @contextmanager
 def _opened(path: Path, read_only: bool = False) -> Iterator[sqlite3.Connection]:
-    """Open a history; every complaint of SQLite's is one sentence."""
+    """Open a history; every complaint of SQLite's is one sentence.
+
+    To read, too, it is opened for writing where it can be: a run that was ended half-way is undone
+    by whoever comes next.
+    """
+    mode = "rwc" if not read_only else "rw" if os.access(path, os.W_OK) else "ro"
     try:
-        where = f"{path.absolute().as_uri()}?mode={'ro' if read_only else 'rwc'}"
+        where = f"{path.absolute().as_uri()}?mode={mode}"
         with closing(
             sqlite3.connect(where, uri=True, timeout=PATIENCE, isolation_level=None)
         ) as connection:
