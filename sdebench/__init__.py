@@ -13,9 +13,12 @@ from sdebench.functional import Functional
 from sdebench.integrator import Claim, Scheme, scheme
 from sdebench.ladder import Ladder
 from sdebench.problem import NormalLaw, Parameter, Params, Problem
+from sdebench.program import program
 from sdebench.sde import SDE, Array
+from sdebench.shared_library import library
 from sdebench.study import measure
 from sdebench.verdict import Verdict
+from sdebench.whole_path import whole_path
 from sdebench.wiener import Noise, StepLaw, concatenate
 
 __all__ = [
@@ -41,9 +44,12 @@ __all__ = [
     "advise",
     "compare",
     "concatenate",
+    "library",
     "load",
     "measure",
     "problem",
+    "program",
     "schema",
     "scheme",
+    "whole_path",
 ]

@@ -85,7 +85,7 @@ def advise(
     levels = Levels(confidence, 0.1, 1)
     found, tried = [], []
     for scheme, _ in chosen_pairs(schemes, problem):
-        if schemes is None and not problem.offers(scheme.noise):
+        if schemes is None and not problem.suits(scheme):
             continue
         plan = Plan(scheme, problem, DEFAULT, chosen, seed)
         pair = Pair(plan, Routes(propagate=True, sample=True, ladder=RUNGS), [claim])

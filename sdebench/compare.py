@@ -87,7 +87,7 @@ def compare(
     chosen = chosen_functionals(functionals)
     own = None if steps is None else Ladder.of(steps)
     asked = [p for _, p in chosen_pairs(first, on)]
-    problems = [p for p in asked if p.offers((*first.noise, *second.noise))]
+    problems = [p for p in asked if p.suits(first) and p.suits(second)]
     if not problems or (on is not None and problems != asked):
         alone = next((p.label for p in asked if p not in problems), "nothing")
         rule = f"{first.label} and {second.label} share no problem there"

@@ -64,6 +64,16 @@ class BadStep(SdebenchError):
         super().__init__(f"'{name}' {why}: a step is f(sde, t, x, h, noise) and returns the new x.")
 
 
+class BadPath(SdebenchError):
+    """An integrator of whole paths that returns no end states."""
+
+    def __init__(self, name: str, seen: str) -> None:
+        super().__init__(
+            f"'{name}' returns {seen} from a whole path, where an array of shape (paths,) of "
+            "float64 belongs: return the states after the last step alone."
+        )
+
+
 class BadFunctional(SdebenchError):
     """A functional whose values cannot be averaged."""
 
@@ -109,6 +119,14 @@ class UserCodeRaised(SdebenchError):
         shown = "".join(traceback.format_list(list(frames)))
         said = f": {cause}" if str(cause) else ""
         super().__init__(f"{name} raised {type(cause).__name__} {where}{said}\n{shown}".rstrip())
+
+
+class ForeignFailed(SdebenchError):
+    """An integrator of another language that failed, with the last lines of its standard error."""
+
+    def __init__(self, name: str, what: str, lines: Sequence[str] = ()) -> None:
+        said = f"; its last lines of standard error:\n{chr(10).join(lines)}" if lines else "."
+        super().__init__(f"'{name}' {what}{said}")
 
 
 class BadEvidenceFile(SdebenchError):

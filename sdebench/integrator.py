@@ -35,7 +35,8 @@ class Scheme:
     """A registered step with its name, its claims and the functionals it needs.
 
     Calling it calls the step. `strong_additive` is the strong claim on additive noise, where it
-    differs from `strong`.
+    differs from `strong`. An integrator that runs whole paths has `path`, and its step is a path of
+    one; it may need parameters of certain names, `params`, that a problem must have.
     """
 
     name: str
@@ -48,6 +49,8 @@ class Scheme:
     module: str
     doc: str
     typed: str | None = None
+    path: Callable[[SDE, float, Array, float, Noise], Array] | None = None
+    params: tuple[str, ...] = ()
 
     def __call__(self, sde: SDE, t: float, x: Array, h: float, noise: Noise) -> Array:
         """Return the step's result."""

@@ -86,15 +86,16 @@ class Pair:
 
     @property
     def applies(self) -> bool:
-        """Whether the problem has every functional that the scheme needs."""
-        return self.plan.problem.offers(self.plan.scheme.noise)
+        """Whether the problem has every functional and parameter that the scheme needs."""
+        return self.plan.problem.suits(self.plan.scheme)
 
     @property
     def why_not(self) -> str:
         """The sentence that says why the scheme does not apply."""
         scheme, problem = self.plan.scheme, self.plan.problem
-        missing = next(name for name in scheme.noise if name not in problem.functionals)
-        return f"{problem.label} has no functional '{missing}', which {scheme.label} steps by."
+        missing = [f"functional '{n}'" for n in scheme.noise if n not in problem.functionals]
+        missing += [f"parameter '{n}'" for n in scheme.params if n not in problem.params]
+        return f"{problem.label} has no {missing[0]}, which {scheme.label} steps by."
 
     @cached_property
     def rows(self) -> list[Row]:

@@ -10,6 +10,7 @@ import numpy as np
 
 from sdebench.coordinate import STATE, Coordinate
 from sdebench.errors import BadParameter, UnknownName
+from sdebench.integrator import Scheme
 from sdebench.quadrature import normal_expectation
 from sdebench.sde import SDE, Array, NoiseKind
 from sdebench.wiener import FUNCTIONALS, Noise
@@ -147,6 +148,10 @@ class Problem:
     def offers(self, noise: Iterable[str]) -> bool:
         """Return whether a scheme that steps by these functionals applies to this problem."""
         return set(noise) <= set(self.functionals)
+
+    def suits(self, scheme: Scheme) -> bool:
+        """Return whether the problem has the functionals and the parameters that a scheme needs."""
+        return self.offers(scheme.noise) and set(scheme.params) <= set(self.params)
 
     @cached_property
     def sde(self) -> SDE:

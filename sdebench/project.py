@@ -76,7 +76,7 @@ class Project:
         return [
             (scheme, problem, claim.kind)
             for scheme, problem in chosen_pairs(self.schemes(), self.guarded.problems)
-            if problem.offers(scheme.noise)
+            if problem.suits(scheme)
             for claim in scheme.claims(problem.noise_kind)
             if claim.kind in self.guarded.kinds
         ]

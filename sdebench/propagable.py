@@ -74,6 +74,8 @@ NORMALS = np.array([0.4, -1.1, 1.7, -0.3])  # of each functional
 
 def why_not(scheme: Scheme, problem: Problem, steps: Iterable[int]) -> str | None:
     """Return why a scheme on a problem cannot be propagated, or None if it can."""
+    if scheme.path is not None:
+        return f"{scheme.label} runs whole paths"
     if not problem.autonomous:
         return f"{problem.label} depends on time"
     asked = blamed(f"Scheme '{scheme.label}'", scheme.step, "when it was tried at other times")

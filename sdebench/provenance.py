@@ -14,6 +14,7 @@ import numpy as np
 
 from sdebench import discovery
 from sdebench.evidence import Provenance, Result
+from sdebench.foreign import Declared
 from sdebench.functional import STANDARD
 from sdebench.integrator import Scheme
 from sdebench.revision import revision
@@ -105,7 +106,7 @@ def _typed(scheme: Scheme) -> str:
     if scheme.typed is not None or discovery.schemes().get(scheme.name) is scheme:
         return scheme.label
     try:
-        return f"{inspect.getfile(scheme.step)}:{scheme.step.__name__}"
+        return f"{inspect.getfile(inspect.unwrap(scheme.step))}:{scheme.step.__name__}"
     except (TypeError, AttributeError):
         return scheme.label
 
@@ -119,10 +120,16 @@ def _digests(plans: Sequence[Plan]) -> dict[str, str]:
     return dict(_found(functions.items()))
 
 
+def _file(function: Callable[..., object]) -> str:
+    """Return the file that a function was loaded from, or an integrator was declared in."""
+    inner = inspect.unwrap(function)
+    return str(inner.file) if isinstance(inner, Declared) else inspect.getfile(inner)
+
+
 def _found(functions: Iterable[tuple[str, Callable[..., object]]]) -> Iterable[tuple[str, str]]:
     for label, function in functions:
         try:
-            file = Path(inspect.getfile(function))
+            file = Path(_file(function))
             digest = hashlib.sha256(file.read_bytes()).hexdigest()
         except (TypeError, OSError):  # of no file: a built-in, or typed at a prompt
             continue

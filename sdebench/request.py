@@ -29,7 +29,7 @@ def chosen_pairs(
         (scheme, problem)
         for scheme in named_schemes
         for problem in named or list(problems().values())
-        if named or problem.offers(scheme.noise)
+        if named or problem.suits(scheme)
     ]
     return list({(s.label, p.label): (s, p) for s, p in pairs}.values())
 

@@ -17,6 +17,7 @@ from functools import cached_property
 import numpy as np
 
 from sdebench.blame import blamed
+from sdebench.errors import BadPath
 from sdebench.functional import Functional
 from sdebench.integrator import Scheme
 from sdebench.ladder import Ladder
@@ -245,10 +246,15 @@ def _guarded(functional: Functional) -> Callable[[Array], Array]:
 
 
 class RungState:
-    """Where a block of paths stands on one rung."""
+    """Where a block of paths stands on one rung.
+
+    An integrator that runs whole paths is given all the noise of the rung once it is drawn.
+    """
 
     def __init__(self, plan: Plan, steps: int) -> None:
         self.h = plan.problem.horizon / steps
+        whole = plan.scheme.noise if plan.scheme.path is not None else ()
+        self.kept = {name: np.empty((steps, BLOCK)) for name in whole}
         self.n_taken = 0
         self.x = np.full(BLOCK, plan.problem.start)
         self.exact = self.x.copy() if plan.grid_maximum else None
@@ -258,11 +264,25 @@ class RungState:
     def advance(self, plan: Plan, sde: SDE, noise: Stack, scratch: Array) -> None:
         """Take the scheme, and on request the exact solution, one step further."""
         t = self.n_taken * self.h
-        own = Noise(**{name: noise[name] for name in plan.scheme.noise})
-        self.x = plan.scheme.step(sde, t, self.x, self.h, own)
+        if plan.scheme.path is None:
+            own = Noise(**{name: noise[name] for name in plan.scheme.noise})
+            self.x = plan.scheme.step(sde, t, self.x, self.h, own)
+        else:
+            self._keep(plan.scheme, sde, noise)
         if self.exact is not None:
             self.exact = plan.problem.exact_step(t, self.exact, self.h, Noise(**noise))
             np.maximum(self.worst, np.abs(self.x - self.exact), out=self.worst)
         np.multiply(noise["dw"], noise["dw"], out=scratch)
         self.quadratic += scratch
         self.n_taken += 1
+
+    def _keep(self, scheme: Scheme, sde: SDE, noise: Stack) -> None:
+        """Keep the noise of a step, and run the whole path once all of it is there."""
+        for name, kept in self.kept.items():
+            kept[self.n_taken] = noise[name]
+        if self.n_taken + 1 == len(next(iter(self.kept.values()))):
+            assert scheme.path is not None
+            end = scheme.path(sde, 0.0, self.x, self.h, Noise(**self.kept))
+            if getattr(end, "shape", None) != self.x.shape or end.dtype != np.float64:
+                raise BadPath(scheme.label, f"{getattr(end, 'shape', type(end).__name__)}")
+            self.x = end

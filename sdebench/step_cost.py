@@ -33,7 +33,7 @@ def step_costs(schemes: Sequence[Scheme], problem: Problem) -> list[float]:
 
     The least of the rounds: what else a machine does only adds to it.
     """
-    suited = [s for s in schemes if problem.offers(s.noise)]
+    suited = [s for s in schemes if problem.suits(s)]
     found = dict(zip((s.label for s in suited), step_seconds(suited, problem), strict=True))
     return [min(found[s.label]) if s.label in found else math.inf for s in schemes]
 
@@ -52,8 +52,15 @@ def _seconds(scheme: Scheme, problem: Problem) -> float:
     x = np.full(BLOCK, problem.start)
     begin = time.perf_counter()
     with np.errstate(all="ignore"), blamed(f"Scheme '{scheme.label}'", scheme.step, "when timed"):
+        drawn = []
         for k in range(N_STEPS):
             noise = law.from_normals([stream.standard_normal(BLOCK) for _ in law.names])
-            own = Noise(**{name: noise[name] for name in scheme.noise})
-            x = scheme.step(sde, k * h, x, h, own)
+            own = {name: noise[name] for name in scheme.noise}
+            if scheme.path is None:
+                x = scheme.step(sde, k * h, x, h, Noise(**own))
+            else:
+                drawn.append(own)
+        if scheme.path is not None:
+            kept = {name: np.stack([each[name] for each in drawn]) for name in scheme.noise}
+            scheme.path(sde, 0.0, x, h, Noise(**kept))
     return (time.perf_counter() - begin) / (N_STEPS * BLOCK)

@@ -4,6 +4,7 @@ import json
 import os
 import re
 import shlex
+import shutil
 import subprocess
 import sys
 import tomllib
@@ -60,6 +61,10 @@ def test_the_blocks_are_those_that_are_tested_here():
         ("run", "gate"),
         ("file", "gate.yml"),
         ("file", "test_desk.py"),
+        ("file", "desk.c"),
+        ("file", "desk_program.py"),
+        ("file", "others.py"),
+        ("run", "others"),
     }
 
 
@@ -89,6 +94,21 @@ def test_the_desks_step_is_advised_and_compared(desk):
     first, second = (line.split()[0] for line in done.stdout.splitlines()[2:4])
     assert (first, second) == ("desk.py:desk_step", "euler-maruyama")
     assert "desk.py:desk_step has the smaller error on every rung" in done.stdout
+
+
+def test_integrators_in_other_languages_are_supported(desk):
+    folder, environment = desk
+    if shutil.which("cc") is None:
+        pytest.skip("no C compiler here")
+    done = subprocess.run(
+        ["sh", "-ec", BLOCKS["run", "others"]],
+        cwd=folder,
+        env=environment,
+        capture_output=True,
+        text=True,
+    )
+    assert (done.returncode, done.stderr) == (0, "")
+    assert "Verdict: supported (6 supported)" in done.stdout
 
 
 def test_the_python_example_runs_and_saves_its_evidence(desk):
