@@ -55,7 +55,7 @@ class Moved:
         if self.by is None or self.doubt is None:
             return "worse: it was zero to within its uncertainty"
         doubt = f"{self.doubt:.2%}" if self.doubt >= SHOWN else f"under {SHOWN:.2%}"
-        return f"{self.change.value} by {abs(self.by):.3%} ± {doubt}"
+        return f"{self.change.value} by {100 * abs(self.by):.3g}% ± {doubt}"
 
 
 @dataclass(frozen=True)

@@ -82,7 +82,7 @@ def test_a_change_that_the_uncertainty_could_be_is_no_regression():
     only = found(propagated(0.102, uncertainty=0.0006), propagated(0.1, uncertainty=0.0006))
     assert only.change is Change.WORSE
     assert not only.red
-    assert str(only) == "worse by 2.000% ± 1.20%"
+    assert str(only) == "worse by 2% ± 1.20%"
 
 
 def test_an_error_that_was_round_off_and_is_not_any_more_is_a_regression():
