@@ -16,6 +16,7 @@ import msgspec
 from sdebench.errors import BadBaseline
 from sdebench.evidence import ClaimResult, Evidence, Result
 from sdebench.verdict import Verdict
+from sdebench.versioned import read_versioned
 from sdebench.whole_file import write_whole
 
 FORMAT: Literal["sdebench-baseline/1"] = "sdebench-baseline/1"
@@ -216,30 +217,13 @@ def save(baseline: Baseline, path: Path) -> None:
 
 def load(path: str | os.PathLike[str]) -> Baseline:
     """Return the baseline in a file; raises `BadBaseline` with what is wrong in it."""
-    shown = os.fspath(path)
-    try:
-        content = Path(path).read_bytes()
-    except FileNotFoundError:
-        raise BadBaseline(shown, "there is none yet; `sdebench accept` makes it") from None
-    except OSError as cause:
-        raise BadBaseline(shown, cause.strerror or str(cause)) from None
-    try:
-        found = msgspec.json.decode(content, type=_Header).format
-        if found != FORMAT:
-            raise BadBaseline(shown, f"its format is '{found}', this version reads '{FORMAT}'")
-        baseline = msgspec.json.decode(content, type=Baseline)
-    except RecursionError:
-        raise BadBaseline(shown, "it is nested too deeply") from None
-    except msgspec.MsgspecError as cause:
-        raise BadBaseline(shown, str(cause)) from None
+    if not Path(path).exists():
+        raise BadBaseline(os.fspath(path), "there is none yet; `sdebench accept` makes it")
+    baseline = read_versioned(path, Baseline, FORMAT, BadBaseline)
     fault = _nonsense(baseline)
     if fault is not None:
-        raise BadBaseline(shown, fault)
+        raise BadBaseline(os.fspath(path), fault)
     return baseline
-
-
-class _Header(msgspec.Struct):
-    format: str
 
 
 def _nonsense(baseline: Baseline) -> str | None:

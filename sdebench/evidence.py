@@ -14,6 +14,7 @@ import msgspec
 
 from sdebench.errors import BadEvidenceFile
 from sdebench.verdict import Verdict, overall
+from sdebench.versioned import read_versioned
 from sdebench.whole_file import write_whole
 
 FORMAT: Literal["sdebench-evidence/1"] = "sdebench-evidence/1"
@@ -208,20 +209,7 @@ class Evidence(msgspec.Struct, frozen=True, kw_only=True):
 
 def load(path: str | os.PathLike[str]) -> Evidence:
     """Return the evidence in a file; raises `BadEvidenceFile` with what is wrong in it."""
-    shown = os.fspath(path)
-    try:
-        content = Path(path).read_bytes()
-    except OSError as cause:
-        raise BadEvidenceFile(shown, cause.strerror or str(cause)) from None
-    try:
-        found = msgspec.json.decode(content, type=_Header).format
-        if found != FORMAT:
-            raise BadEvidenceFile(shown, f"its format is '{found}', this version reads '{FORMAT}'")
-        return msgspec.json.decode(content, type=Evidence)
-    except RecursionError:
-        raise BadEvidenceFile(shown, "it is nested too deeply") from None
-    except msgspec.MsgspecError as cause:
-        raise BadEvidenceFile(shown, str(cause)) from None
+    return read_versioned(path, Evidence, FORMAT, BadEvidenceFile)
 
 
 def only(evidence: Evidence, pairs: Collection[tuple[str, str]]) -> Evidence:
@@ -230,10 +218,6 @@ def only(evidence: Evidence, pairs: Collection[tuple[str, str]]) -> Evidence:
     rows = [r for r in evidence.results if (r.scheme, r.problem) in pairs]
     verdict = overall([claim.verdict for claim in claims])
     return msgspec.structs.replace(evidence, claims=claims, results=rows, verdict=verdict)
-
-
-class _Header(msgspec.Struct):
-    format: str
 
 
 def finite(value: float) -> float | None:

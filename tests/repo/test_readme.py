@@ -42,6 +42,13 @@ def desk(tmp_path):
     return tmp_path, dropped | {"PATH": f"{scripts}{os.pathsep}{os.environ['PATH']}"}
 
 
+def ran(desk, name: str, *words: str) -> subprocess.CompletedProcess[str]:
+    """Run a block of commands, by the shell unless told by what."""
+    folder, environment = desk
+    command = [*(words or ("sh", "-ec")), BLOCKS["run", name]]
+    return subprocess.run(command, cwd=folder, env=environment, capture_output=True, text=True)
+
+
 def test_every_fenced_block_is_marked_for_a_test():
     assert len(BLOCKS) == README.count("\n```") // 2
 
@@ -69,27 +76,13 @@ def test_the_blocks_are_those_that_are_tested_here():
 
 
 def test_the_example_is_supported_on_every_problem(desk):
-    folder, environment = desk
-    done = subprocess.run(
-        ["sh", "-ec", BLOCKS["run", "example"]],
-        cwd=folder,
-        env=environment,
-        capture_output=True,
-        text=True,
-    )
+    done = ran(desk, "example")
     assert (done.returncode, done.stderr) == (0, "")
     assert "Verdict: supported (6 supported)" in done.stdout
 
 
 def test_the_desks_step_is_advised_and_compared(desk):
-    folder, environment = desk
-    done = subprocess.run(
-        ["sh", "-ec", BLOCKS["run", "advice"]],
-        cwd=folder,
-        env=environment,
-        capture_output=True,
-        text=True,
-    )
+    done = ran(desk, "advice")
     assert (done.returncode, done.stderr) == (0, "")
     first, second = (line.split()[0] for line in done.stdout.splitlines()[2:4])
     assert (first, second) == ("desk.py:desk_step", "euler-maruyama")
@@ -97,41 +90,25 @@ def test_the_desks_step_is_advised_and_compared(desk):
 
 
 def test_integrators_in_other_languages_are_supported(desk):
-    folder, environment = desk
     if shutil.which("cc") is None:
         pytest.skip("no C compiler here")
-    done = subprocess.run(
-        ["sh", "-ec", BLOCKS["run", "others"]],
-        cwd=folder,
-        env=environment,
-        capture_output=True,
-        text=True,
-    )
+    done = ran(desk, "others")
     assert (done.returncode, done.stderr) == (0, "")
     assert "Verdict: supported (6 supported)" in done.stdout
 
 
 def test_the_python_example_runs_and_saves_its_evidence(desk):
-    folder, environment = desk
-    done = subprocess.run(
-        [sys.executable, "-c", BLOCKS["run", "python"]],
-        cwd=folder,
-        env=environment,
-        capture_output=True,
-        text=True,
-    )
+    folder, _ = desk
+    done = ran(desk, "python", sys.executable, "-c")
     assert (done.returncode, done.stderr) == (0, "")
     assert done.stdout.startswith("supported 0.99")
     assert json.loads((folder / "evidence.json").read_text())["verdict"] == "supported"
 
 
 def test_the_desks_report_is_written_and_its_figure_restyled(desk):
-    folder, environment = desk
-    for command in (
-        ["sh", "-ec", BLOCKS["run", "report"]],
-        [sys.executable, "-c", BLOCKS["run", "figures"]],
-    ):
-        done = subprocess.run(command, cwd=folder, env=environment, capture_output=True, text=True)
+    folder, _ = desk
+    for words in (("report",), ("figures", sys.executable, "-c")):
+        done = ran(desk, *words)
         assert (done.returncode, done.stderr) == (0, "")
     page = (folder / "report" / "report.html").read_text()
     assert "All 4 claims of 1 scheme on 2 problems are supported." in page
