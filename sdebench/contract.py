@@ -21,7 +21,7 @@ from sdebench.trial import N_PATHS, Trial, scaled, trials
 from sdebench.wiener import Noise
 
 N_FEW = 256  # paths with other parameters than the problem's own
-N_ROUNDS = 5  # times that four threads call the step at once
+N_ROUNDS = 2  # times a trial that four threads call the step at once; two cores miss 1 in 30
 ROUND_OFF = 64 * float(np.finfo(float).eps)  # some 64 operations a step, relative to its terms
 
 

@@ -100,12 +100,9 @@ def _level(scheme: Scheme, setting: Setting, h: float, n_moments: int) -> tuple[
         check.moments(n_moments)[0],
         moments_needed,
         floors[:, None] * sizes,
-        step.project(step.yours),
-        step.project(step.needed),
-        step.project(step.d),
+        *step.project(np.stack((step.yours, step.needed, step.d))),
         check.project(check.d),
-        step.rest(step.yours),
-        step.rest(step.needed),
+        *step.rest(np.stack((step.yours, step.needed))),
         floors,
     )
 
@@ -123,7 +120,7 @@ class _Step:
     d: Array
 
     def mean(self, values: Array) -> Array:
-        """Return expectations, shape `(states,)`."""
+        """Return expectations, shape `(…, states)`."""
         return np.asarray((values @ self.rest_weights) @ self.weights)
 
     def project(self, values: Array) -> Array:
@@ -145,14 +142,13 @@ class _Step:
         F_j = Δ F_(j-1) + Δ'^(j-1), without cancellation between nearly equal moments.
         """
         factor = power = np.ones_like(self.d)
-        columns = []
-        for _ in range(n_moments):
+        averaged = np.empty((3, n_moments, *self.d.shape))
+        for j in range(n_moments):
             higher = power * self.needed
-            size = np.sqrt(self.mean(factor * factor))
-            columns.append((self.mean(self.d * factor), self.mean(higher), size))
+            averaged[:, j] = self.d * factor, higher, factor * factor
             factor, power = self.yours * factor + higher, higher
-        differences, needed, sizes = (np.stack(column, -1) for column in zip(*columns, strict=True))
-        return differences, needed, sizes
+        differences, needed, squares = self.mean(averaged).swapaxes(1, 2)
+        return differences, needed, np.sqrt(squares)
 
 
 def _step(scheme: Scheme, setting: Setting, h: float, rule: Rule) -> _Step:
@@ -196,11 +192,12 @@ def limit(values: Array, floors: Array) -> tuple[Array, Array]:
         doubt = np.abs(following - column[1:]) + noise
         doubt[1:] += np.abs(following[1:] - following[:-1])
         doubt[0] = np.inf
-        index = np.argmin(doubt, axis=0)[None]
-        found = np.take_along_axis(doubt, index, axis=0)[0]
+        found = doubt.min(axis=0)
         better = found < least
-        best = np.where(better, np.take_along_axis(following, index, axis=0)[0], best)
-        least = np.where(better, found, least)
+        if better.any():
+            index = np.argmin(doubt, axis=0)[None]
+            best = np.where(better, np.take_along_axis(following, index, axis=0)[0], best)
+            least = np.where(better, found, least)
         column = following
     return best, 3 * least
 

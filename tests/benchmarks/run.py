@@ -14,6 +14,7 @@ import time
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 
@@ -47,6 +48,7 @@ def main() -> None:
     start_up()
     assertion()
     plugin()
+    other_languages()
 
 
 def sampled_ladder(name: str, aim: float, threads: int, ladder: Ladder = DEFAULT) -> None:
@@ -280,24 +282,43 @@ def assertion() -> None:
 
 
 def plugin() -> None:
-    """Collecting a project that does not use the plugin, with it over without it."""
+    """Loading the plugin in a process that has pytest, which is all that it adds to a project.
+
+    The time of a whole collection drifts by more than that from one run to the next.
+    """
+    code = (
+        "import pytest, time; begin = time.perf_counter(); import sdebench_pytest; "
+        "print(time.perf_counter() - begin)"
+    )
+    words = [sys.executable, "-c", code]
+    added = [
+        float(subprocess.run(words, check=True, capture_output=True, text=True).stdout)
+        for _ in range(REPEATS)
+    ]
+    plain = run([sys.executable, "-c", "import pytest"])
+    show("loading the plugin / importing pytest", [each / plain for each in added], "20 ms")
+    print(f"added by the plugin: {statistics.median(added) * 1e3:.2f} ms   (aim: 20)")
+
+
+def other_languages() -> None:
+    """Sampling Milstein on gbm in C and in a program of its own, over the same in NumPy."""
+    sources = Path(__file__).parents[1] / "foreign"
     with tempfile.TemporaryDirectory() as folder:
-        with open(f"{folder}/test_plain.py", "w") as file:
-            file.write("def test_it():\n    pass\n")
-        words = [
-            sys.executable,
-            "-m",
-            "pytest",
-            "--collect-only",
-            "-q",
-            "--rootdir",
-            folder,
-            folder,
-        ]
-        times = [(run(words), run([*words, "-p", "no:sdebench"])) for _ in range(3 * REPEATS)]
-    show("pytest --collect-only with the plugin / without", [a / b for a, b in times], "20 ms")
-    added = statistics.median(a - b for a, b in times)
-    print(f"added by the plugin: {added * 1e3:.1f} ms   (aim: 20)")
+        library = f"{folder}/libmilstein.so"
+        words = ["gcc", "-O2", "-shared", "-fPIC", str(sources / "milstein.c"), "-o", library]
+        subprocess.run(words, check=True)
+        own = {"params": ("mu", "sigma"), "strong": 1.0, "weak": 1.0}
+        in_c = sb.library(library, "milstein_path", **own)
+        alone = sb.program([sys.executable, str(sources / "milstein_program.py")], **own)
+        numpy = plan_of("milstein")
+        ratios: dict[str, list[float]] = {"C": [], "a program": []}
+        for _ in range(REPEATS):
+            plain = seconds(lambda: sample(numpy, 1))
+            for name, scheme in (("C", in_c), ("a program", alone)):
+                other = replace(numpy, scheme=scheme)
+                ratios[name].append(seconds(lambda other=other: sample(other, 1)) / plain)
+    show("milstein on gbm in C / in NumPy", ratios["C"], "at most 1.2")
+    show("milstein on gbm in a program / in NumPy", ratios["a program"], "at most 2")
 
 
 if __name__ == "__main__":

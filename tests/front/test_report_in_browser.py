@@ -1,7 +1,7 @@
 """The report in a real browser, on a screen, a phone and paper.
 
 Chromium is Debian's (`apt-get install chromium`); `.ci/run` installs it, and then asks for these
-tests by SDEBENCH_BROWSER=required. Rules of accessibility are those of axe-core (WCAG 2.2 AA).
+tests by SDEBENCH_TOOLS=required. Rules of accessibility are those of axe-core (WCAG 2.2 AA).
 """
 
 import os
@@ -19,7 +19,7 @@ import sdebench as sb
 
 CHROMIUM = shutil.which("chromium")
 pytestmark = pytest.mark.skipif(
-    CHROMIUM is None and os.environ.get("SDEBENCH_BROWSER") != "required",
+    CHROMIUM is None and os.environ.get("SDEBENCH_TOOLS") != "required",
     reason="no Chromium here; .ci/run installs one",
 )
 FLAGS = [
