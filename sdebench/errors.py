@@ -129,6 +129,16 @@ class ForeignFailed(SdebenchError):
         super().__init__(f"'{name}' {what}{said}")
 
 
+class NothingSuits(SdebenchError):
+    """A scheme that no problem of the bench has everything for."""
+
+    def __init__(self, scheme: str, needed: Sequence[str]) -> None:
+        super().__init__(
+            f"No problem has all that {scheme} steps by: {', '.join(needed)}. `sdebench catalogue` "
+            "lists the functionals and parameters of each."
+        )
+
+
 class BadEvidenceFile(SdebenchError):
     """An evidence file that cannot be read back."""
 

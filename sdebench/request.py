@@ -6,7 +6,7 @@ from collections.abc import Callable, Iterable
 from typing import TypeVar
 
 from sdebench.discovery import find_functional, find_problem, find_scheme, problems, schemes
-from sdebench.errors import BadOption
+from sdebench.errors import BadOption, NothingSuits
 from sdebench.functional import STANDARD, Functional
 from sdebench.integrator import Scheme
 from sdebench.problem import Problem
@@ -22,7 +22,10 @@ def chosen_pairs(
     given: SchemeLike | Iterable[SchemeLike] | None,
     on: ProblemLike | Iterable[ProblemLike] | None,
 ) -> list[tuple[Scheme, Problem]]:
-    """Return the pairs to measure; without a problem named, those that the scheme applies to."""
+    """Return the pairs to measure; without a problem named, those that the scheme applies to.
+
+    Raises `NothingSuits` for a scheme that is named and applies to none.
+    """
     named_schemes = [find_scheme(s) for s in _several("schemes", given)] or list(schemes().values())
     named = [find_problem(p) for p in _several("on", on)]
     pairs = [
@@ -31,6 +34,10 @@ def chosen_pairs(
         for problem in named or list(problems().values())
         if named or problem.suits(scheme)
     ]
+    if given is not None and not named:
+        for scheme in named_schemes:
+            if not any(scheme is each for each, _ in pairs):
+                raise NothingSuits(scheme.label, (*scheme.noise, *scheme.params))
     return list({(s.label, p.label): (s, p) for s, p in pairs}.values())
 
 

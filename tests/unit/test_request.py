@@ -4,7 +4,7 @@ import pytest
 
 import sdebench as sb
 from sdebench.discovery import problems, schemes
-from sdebench.errors import BadOption
+from sdebench.errors import BadOption, NothingSuits
 from sdebench.functional import STANDARD
 from sdebench.request import check_numbers, chosen_functionals, chosen_pairs, processors
 
@@ -110,3 +110,10 @@ def test_one_functional_may_be_given_without_a_list():
 
 def test_there_is_a_processor():
     assert processors() >= 1
+
+
+def test_a_scheme_that_no_problem_suits_is_told_with_what_it_needs():
+    astray = sb.library("none.so", "path", params=("mu", "sigmaa"), strong=1.0)
+    with pytest.raises(NothingSuits, match="No problem has all that path steps by: dw, mu, sigmaa"):
+        chosen_pairs(["milstein", astray], None)
+    assert named(chosen_pairs(astray, "gbm")) == [("path", "gbm")]
