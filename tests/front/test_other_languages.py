@@ -6,6 +6,7 @@ Mutants of them are refuted; what fails is told in one sentence, and nothing is 
 import os
 import shutil
 import subprocess
+from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
@@ -68,18 +69,21 @@ def declared(built, folder) -> Path:
     return folder
 
 
-def running_programs(folder: Path) -> list[str]:
-    """Return the processes whose command line names the folder of the test."""
-    found = []
+def processes() -> Iterator[tuple[str, str, int]]:
+    """Yield the words, the state and the parent of every process but this one."""
     for each in Path("/proc").glob("[0-9]*"):
         try:
             words = (each / "cmdline").read_bytes().decode(errors="replace")
-            state = (each / "stat").read_text().rpartition(")")[2].split()[0]
+            state, parent, *_ = (each / "stat").read_text().rpartition(")")[2].split()
         except OSError:
             continue
-        if str(folder) in words and str(os.getpid()) != each.name:
-            found.append(f"{state} {words}")
-    return found
+        if each.name != str(os.getpid()):
+            yield words.replace("\0", " "), state, int(parent)
+
+
+def running(what: object) -> list[str]:
+    """Return the processes whose words hold something."""
+    return [words for words, _, _ in processes() if str(what) in words]
 
 
 def strong_errors(evidence: sb.Evidence) -> list[float]:
@@ -204,20 +208,15 @@ def test_a_program_that_fails_is_told_and_nothing_of_it_is_left(
     assert outcome.code == (1 if "nan" in told[0] else 2), said
     assert all(each in said for each in told), said
     assert "Traceback" not in said
-    assert not running_programs(declared)
+    assert not running(declared)
     if "sleep" in body:
-        assert "sleep 98765" not in running_sleeps()
+        assert not running("sleep 98765")
     assert not list(temporary.iterdir())
-
-
-def running_sleeps() -> list[str]:
-    done = subprocess.run(["ps", "ax", "-o", "args="], capture_output=True, text=True, check=False)
-    return [line for line in done.stdout.splitlines() if line.startswith("sleep")]
 
 
 def test_programs_end_with_the_bench(in_own_process, declared):
     assert in_own_process("measure", "own.py:alone", *QUICK).code == 0
-    assert not running_programs(declared)
+    assert not running(declared)
 
 
 def test_no_zombie_is_left_while_the_bench_goes_on(declared):
@@ -225,11 +224,10 @@ def test_no_zombie_is_left_while_the_bench_goes_on(declared):
     for _ in range(3):
         with pytest.raises(sb.SdebenchError, match="ended with exit code 1"):
             sb.measure("own.py:alone", on="gbm", looks=1)
-    assert not running_programs(declared)
-    children = subprocess.run(
-        ["ps", "--ppid", str(os.getpid()), "-o", "stat="], capture_output=True, text=True
-    ).stdout.split()
-    assert not [state for state in children if state.startswith("Z")]
+    assert not running(declared)
+    assert not [
+        words for words, state, parent in processes() if (state, parent) == ("Z", os.getpid())
+    ]
 
 
 MISSING = {
