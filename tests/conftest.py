@@ -5,6 +5,8 @@ import pytest
 import sdebench as sb
 from sdebench import discovery
 
+collect_ignore = ["foreign"]  # integrators that tests run: a program reads its standard input
+
 
 def pytest_generate_tests(metafunc: pytest.Metafunc) -> None:
     """Give tests that ask for `scheme` or `problem` every registered one, by name."""

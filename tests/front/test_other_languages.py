@@ -162,6 +162,7 @@ for line in iter(sys.stdin.buffer.readline, b""):
     dw = np.lib.format.read_array(pipe)
     n += 1
 """
+LONG = 1_000_000 + os.getpid()  # seconds, that tell the child of this run from others
 FAULTS = {
     "it exits": ("    sys.exit('no licence')", ["ended with exit code 1", "no licence"]),
     "it dies by a signal": ("    os.abort()", ["ended by signal 6"]),
@@ -186,7 +187,7 @@ FAULTS = {
         ["ended with exit code 7"],
     ),
     "it hangs with a child": (
-        "    subprocess.Popen(['sleep', '98765']); time.sleep(98765)",
+        f"    subprocess.Popen(['sleep', '{LONG}']); time.sleep({LONG})",
         ["has not answered within 2 s and was ended"],
     ),
     "it gives NaN": ("    np.save(out, np.nan * x); out.flush()", ["gives nan for finite input"]),
@@ -210,7 +211,7 @@ def test_a_program_that_fails_is_told_and_nothing_of_it_is_left(
     assert "Traceback" not in said
     assert not running(declared)
     if "sleep" in body:
-        assert not running("sleep 98765")
+        assert not running(f"sleep {LONG}")
     assert not list(temporary.iterdir())
 
 
