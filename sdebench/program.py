@@ -106,7 +106,7 @@ class Program(Declared):
         for each in drawn:
             parts += _npy(each)
         try:
-            end = running.answer(parts, x.size, time.monotonic() + self.seconds, self.seconds)
+            end = running.answer(parts, x.size, Limit(self.seconds))
         except BaseException:
             running.end()
             raise
@@ -135,6 +135,19 @@ class Program(Declared):
         return str(place.resolve()) if place.is_file() else word
 
 
+class Limit:
+    """The time that one run may take, from now on."""
+
+    def __init__(self, seconds: float) -> None:
+        self.seconds = seconds
+        self.end = time.monotonic() + seconds
+
+    @property
+    def left(self) -> float:
+        """The seconds that are left, at least 0."""
+        return max(self.end - time.monotonic(), 0.0)
+
+
 class Running:
     """A process of a program, alone in its group so that its children end with it."""
 
@@ -159,21 +172,19 @@ class Running:
         _widen(self.to)
         _widen(self.back)
 
-    def answer(
-        self, parts: Sequence[bytes | memoryview], n_paths: int, deadline: float, seconds: float
-    ) -> Array:
+    def answer(self, parts: Sequence[bytes | memoryview], n_paths: int, limit: Limit) -> Array:
         """Send a run and return its end states; raises `ForeignFailed`."""
-        self._send(parts, deadline, seconds)
-        head = self._read(len(MAGIC) + 2, deadline, seconds, begins=MAGIC)
+        self._send(parts, limit)
+        head = self._read(len(MAGIC) + 2, limit, begins=MAGIC)
         size = 2 if head[-2] == 1 else 4
-        length = self._read(size, deadline, seconds)
-        described = self._read(int.from_bytes(length, "little"), deadline, seconds)
+        length = self._read(size, limit)
+        described = self._read(int.from_bytes(length, "little"), limit)
         shape, kind = self._described(head[-2], bytes(length + described))
         if shape != (n_paths,) or kind != np.float64:
             raise self._failed(
                 f"answered an array of {kind} of shape {shape}, not of float64 of ({n_paths},)"
             )
-        content = self._read(n_paths * kind.itemsize, deadline, seconds)
+        content = self._read(n_paths * kind.itemsize, limit)
         end: Array = np.frombuffer(content, dtype=kind)
         return end
 
@@ -186,11 +197,11 @@ class Running:
             raise self._failed(f"answered an array that cannot be read: {cause}") from None
         return shape, kind
 
-    def _send(self, parts: Sequence[bytes | memoryview], deadline: float, seconds: float) -> None:
+    def _send(self, parts: Sequence[bytes | memoryview], limit: Limit) -> None:
         for part in parts:
             left = memoryview(part).cast("B")
             while left:
-                self._wait([], [self.to], deadline, seconds)
+                self._wait(self.to, select.POLLOUT, limit)
                 try:
                     left = left[os.write(self.to, left[:CHUNK]) :]
                 except BlockingIOError:
@@ -198,12 +209,12 @@ class Running:
                 except BrokenPipeError:
                     raise self._failed(self._how_it_ended()) from None
 
-    def _read(self, size: int, deadline: float, seconds: float, begins: bytes = b"") -> bytearray:
+    def _read(self, size: int, limit: Limit, begins: bytes = b"") -> bytearray:
         """Return so many bytes, of which the first must be as given."""
         found = bytearray(size)
         left = memoryview(found)
         while left:
-            self._wait([self.back], [], deadline, seconds)
+            self._wait(self.back, select.POLLIN, limit)
             n = os.readv(self.back, [left[:CHUNK]])
             if n == 0:
                 told = f"{size - len(left)} of {size} bytes of its answer"
@@ -215,12 +226,11 @@ class Running:
                     raise self._failed(f"answered {seen!r}, which begins no array in NPY format")
         return found
 
-    def _wait(
-        self, reading: list[int], writing: list[int], deadline: float, seconds: float
-    ) -> None:
-        left = deadline - time.monotonic()
-        if left <= 0 or not any(select.select(reading, writing, [], left)):
-            raise self._failed(f"has not answered within {seconds:g} s and was ended")
+    def _wait(self, pipe: int, event: int, limit: Limit) -> None:
+        poll = select.poll()
+        poll.register(pipe, event)
+        if not poll.poll(1000 * limit.left):
+            raise self._failed(f"has not answered within {limit.seconds:g} s and was ended")
 
     def _how_it_ended(self) -> str:
         try:
