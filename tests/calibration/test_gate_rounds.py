@@ -8,7 +8,7 @@ from sdebench.regression import Change
 
 pytestmark = pytest.mark.calibration
 
-N_ROUNDS = 15
+N_ROUNDS = 6
 TABLE = """\
 schemes = ["milstein"]
 problems = ["gbm", "ramped-noise"]

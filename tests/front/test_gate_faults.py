@@ -4,6 +4,7 @@ The process writes without a pause and is killed after a random time, so that th
 every part of a write. The wrong version it catches: a file that is opened and written in place.
 """
 
+import multiprocessing
 import os
 import random
 import resource
@@ -12,6 +13,8 @@ import sqlite3
 import subprocess
 import sys
 import time
+from multiprocessing.synchronize import Event
+from pathlib import Path
 
 import pytest
 
@@ -19,20 +22,6 @@ import sdebench as sb
 from sdebench.baseline import baseline_of, load, save
 from sdebench.errors import BadHistory, CannotWrite
 from sdebench.history import append, read
-
-WRITES = """
-import sys, pathlib, sdebench as sb
-from sdebench.baseline import load, save
-from sdebench.history import append
-what, evidence, baseline, history = sys.argv[1:]
-e, b = sb.load(evidence), load(baseline)
-print("ready", flush=True)
-while True:
-    if what == "accept":
-        save(b, pathlib.Path(baseline))
-    else:
-        append(pathlib.Path(history), e, 0)
-"""
 
 
 @pytest.fixture(scope="module")
@@ -48,17 +37,26 @@ def place(tmp_path, evidence):
     return tmp_path
 
 
-def killed(place, what: str, rng: random.Random) -> None:
+def write_without_end(place: Path, what: str, evidence: sb.Evidence, ready: Event) -> None:
+    baseline = load(place / "b.json")
+    ready.set()
+    while True:
+        if what == "accept":
+            save(baseline, place / "b.json")
+        else:
+            append(place / "h.db", evidence, 0)
+
+
+def killed(place: Path, what: str, evidence: sb.Evidence, rng: random.Random) -> None:
     """Start a process that writes without end, and kill it in the middle of it."""
-    files = [str(place / name) for name in ("e.json", "b.json", "h.db")]
-    process = subprocess.Popen(
-        [sys.executable, "-c", WRITES, what, *files], stdout=subprocess.PIPE, text=True
-    )
-    assert process.stdout is not None
-    assert process.stdout.readline() == "ready\n"
+    context = multiprocessing.get_context("fork")  # which need not import anything again
+    ready = context.Event()
+    process = context.Process(target=write_without_end, args=(place, what, evidence, ready))
+    process.start()
+    assert ready.wait(timeout=30)
     time.sleep(rng.uniform(0.0, 0.05))
-    process.send_signal(signal.SIGKILL)
-    process.communicate()
+    process.kill()
+    process.join()
 
 
 def whole(place, evidence, rounds: int, seed: int) -> None:
@@ -66,7 +64,7 @@ def whole(place, evidence, rounds: int, seed: int) -> None:
     known = load(place / "b.json")
     n_rows = len(read(place / "h.db"))
     for n in range(rounds):
-        killed(place, "accept" if n % 2 else "append", rng)
+        killed(place, "accept" if n % 2 else "append", evidence, rng)
         assert load(place / "b.json") == known
         points = read(place / "h.db")
         assert len(points) % n_rows == 0, "a run is there with all its rows or not at all"
