@@ -1,4 +1,4 @@
-"""Over 200 seeds: intervals cover what they say, and no honest scheme is refuted.
+"""Over 120 seeds: intervals cover what they say, and no honest scheme is refuted.
 
 Every registered scheme on every problem with errors in closed form that it applies to, sampled
 and at the levels of a default run; contract and one-step evidence do not depend on the seed and are
@@ -29,7 +29,7 @@ from tests.tolerance import binomial_band
 
 pytestmark = pytest.mark.calibration
 
-N_SEEDS = 200
+N_SEEDS = 120
 LEVELS = Levels(confidence=0.95, tolerance=0.1, n_rows=60)
 KNOWN = {None: "mean-square", 0: "mean", 1: "second-moment", 2: "cos"}
 
@@ -60,7 +60,7 @@ def test_no_honest_scheme_is_refuted_and_all_but_a_few_are_supported(found):
 
 
 def test_the_interval_of_each_rung_covers_the_known_error_as_often_as_it_says(found):
-    """Each rung's 200 intervals against the binomial band of C, false alarm 1e-6 over all rungs."""
+    """Each rung's 120 intervals against the binomial band of C, false alarm 1e-6 over all rungs."""
     covered = sum((each.covered for each in found), Counter())
     keys = {key[:-1] for key in covered}
     low, high = binomial_band(N_SEEDS, LEVELS.confidence, 1e-6 / len(keys))

@@ -27,7 +27,7 @@ def test_a_fault_that_only_whole_paths_meet_is_refuted_on_every_seed(mutant: Mut
 
 
 def test_a_registered_scheme_is_supported_on_every_seed(scheme, problem, pair_applies):
-    """On two seeds by both routes; by sampling alone on 200, in tests/calibration."""
+    """On two seeds by both routes; by sampling alone on 120, in tests/calibration."""
     if not pair_applies(scheme, problem):
         pytest.skip(f"{problem.name} lacks what {scheme.name} steps by")
     for seed in SEEDS[:2]:
