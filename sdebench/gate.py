@@ -5,7 +5,8 @@ from dataclasses import dataclass
 from functools import cached_property
 from itertools import groupby
 
-from sdebench.baseline import AcceptedRow, Baseline, baseline_of, load, save
+from sdebench.acceptance import baseline_of
+from sdebench.baseline import AcceptedRow, Baseline, load, save
 from sdebench.errors import BadBaseline, RefutedEvidence
 from sdebench.evidence import Evidence
 from sdebench.project import Project

@@ -6,8 +6,10 @@ it rests on.
 
 import io
 from collections.abc import Callable
+from dataclasses import replace
 from typing import Any
 
+from sdebench.discovery import find_scheme
 from sdebench.evidence import ClaimResult, Evidence
 from sdebench.integrator import Scheme
 from sdebench.integrator import scheme as decorate
@@ -28,8 +30,8 @@ def assert_converges(
     """Return evidence that a step converges; raise `AssertionError` unless it supports all claims.
 
     `step`: a plain function f(sde, t, x, h, noise) whose claims are `strong` and `weak`, or a
-    scheme, by name or decorated, with claims of its own. `on`: a problem. `options` are those of
-    `sdebench.measure` (steps, functionals, seed, confidence, tolerance, looks, ...).
+    scheme, by name or decorated, which is held to its own claims unless these are given. `on`: a
+    problem. `options` are those of `sdebench.measure` (steps, functionals, seed, looks, ...).
 
     >>> def euler(sde, t, x, h, noise):
     ...     return x + sde.drift(t, x) * h + sde.diffusion(t, x) * noise.dw
@@ -40,12 +42,21 @@ def assert_converges(
     AssertionError: euler on gbm, strong: refuted. ...
     """
     __tracebackhide__ = True
-    tested = step if isinstance(step, Scheme | str) else decorate(strong=strong, weak=weak)(step)
-    evidence = measure(tested, on=on, **options)
+    evidence = measure(_held_to(step, strong, weak), on=on, **options)
     failed = [claim for claim in evidence.claims if claim.verdict is not Verdict.SUPPORTED]
     if failed:
         raise AssertionError("\n\n".join(explained(evidence, claim) for claim in failed))
     return evidence
+
+
+def _held_to(step: Any, strong: float | None, weak: float | None) -> Scheme:
+    """Return a scheme with these claims, or with its own if none is given."""
+    if not isinstance(step, Scheme | str):
+        return decorate(strong=strong, weak=weak)(step)
+    scheme = find_scheme(step)
+    if strong is None and weak is None:
+        return scheme
+    return replace(scheme, strong=strong, weak=weak, strong_additive=None)
 
 
 def explained(evidence: Evidence, claim: ClaimResult) -> str:

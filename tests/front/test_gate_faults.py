@@ -19,7 +19,8 @@ from pathlib import Path
 import pytest
 
 import sdebench as sb
-from sdebench.baseline import baseline_of, load, save
+from sdebench.acceptance import baseline_of
+from sdebench.baseline import load, save
 from sdebench.errors import BadHistory, CannotWrite
 from sdebench.history import append, read
 

@@ -5,7 +5,8 @@ import json
 import msgspec
 import pytest
 
-from sdebench.baseline import baseline_of, load, save
+from sdebench.acceptance import baseline_of
+from sdebench.baseline import load, save
 from sdebench.errors import BadBaseline
 
 

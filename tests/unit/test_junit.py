@@ -8,7 +8,7 @@ import pytest
 from sdebench.reports.gate_tables import gate_markdown, gate_sentence, gate_table
 from sdebench.reports.junit import junit
 
-from sdebench.baseline import baseline_of
+from sdebench.acceptance import baseline_of
 from sdebench.gate import Gated
 from sdebench.project import Guarded, Project
 from sdebench.verdict import Verdict

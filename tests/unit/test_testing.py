@@ -48,3 +48,10 @@ def test_a_step_without_claims_is_a_wrong_use():
 def test_an_unknown_problem_is_a_wrong_use_and_no_failed_assertion():
     with pytest.raises(UnknownName):
         assert_converges(euler, on="gmb", strong=0.5)
+
+
+def test_a_scheme_is_held_to_the_claims_that_are_given_and_not_to_its_own():
+    found = assert_converges("milstein", strong=0.5, **QUICK)
+    assert [(claim.kind, claim.claimed) for claim in found.claims] == [("strong", 0.5)]
+    with pytest.raises(AssertionError, match="euler-maruyama on gbm, strong: refuted"):
+        assert_converges("euler-maruyama", strong=1.0, **QUICK)
